@@ -1,0 +1,111 @@
+"""The values of design columns over the base of a run: fills applied, rungs and levels evaluated."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+import numpy as np
+from numpy.typing import NDArray
+
+from beforehand.fit.columns import Factor, FloatArray, Key
+from beforehand.fit.ladder import apply_rung
+from beforehand.steps.missing_data import Base
+from beforehand.table import Table
+
+
+class TableSource:
+    """Supplies design columns block by block; nothing wider than a block is ever made.
+
+    Parameters
+    ----------
+    table : Table
+    base : Base
+        Rows kept and cells filled.
+    """
+
+    def __init__(self, table: Table, base: Base) -> None:
+        self._table = table
+        self._kept = base.kept
+        self._whole = len(base.kept) == table.n_rows
+        self._patched: Mapping[str, NDArray[np.float64]] = {
+            fill.predictor: _patched(table.columns[fill.predictor].values, fill.positions, fill.values)
+            for fill in base.fills
+        }
+
+    @property
+    def n_rows(self) -> int:
+        """Rows of the base."""
+        return len(self._kept)
+
+    def raw(self, column: str, start: int = 0, stop: int | None = None) -> FloatArray:
+        """A table column over base rows, fills applied: numbers, or codes of levels as floats."""
+        values = self._patched.get(column)
+        if values is None:
+            values = self._table.columns[column].values
+        rows = values[start:stop] if self._whole else values[self._kept[start:stop]]
+        return np.asarray(rows, dtype=np.float64)
+
+    def at(self, column: str, positions: NDArray[np.int64]) -> FloatArray:
+        """A table column in some rows of the base."""
+        values = self._patched.get(column)
+        if values is None:
+            values = self._table.columns[column].values
+        return np.asarray(values[self._kept[positions]], dtype=np.float64)
+
+    def levels(self, column: str) -> tuple[str, ...]:
+        """Levels of a category, in their declared order."""
+        return self._table.columns[column].levels
+
+    def read(self, key: Key, start: int, stop: int) -> FloatArray:
+        """Values of a design column in rows ``start`` to ``stop``."""
+        return evaluate(key, lambda column: self.raw(column, start, stop), self.levels)
+
+    def rows(self, key: Key, positions: NDArray[np.int64]) -> FloatArray:
+        """Values of a design column in some rows of the base."""
+        return evaluate(key, lambda column: self.at(column, positions), self.levels)
+
+    def label(self, position: int) -> str:
+        """The label of a row of the base."""
+        return str(self._table.labels[int(self._kept[position])])
+
+    def labels(self) -> list[str]:
+        """Labels of all rows of the base, in canonical order."""
+        labels = self._table.labels if self._whole else self._table.labels[self._kept]
+        return [str(label) for label in labels.tolist()]
+
+
+def _patched(
+    values: NDArray[np.float64], positions: NDArray[np.int64], filled: NDArray[np.float64]
+) -> NDArray[np.float64]:
+    """A column with its missing cells filled."""
+    whole = np.array(values, dtype=np.float64)
+    whole[positions] = filled
+    return whole
+
+
+def evaluate(key: Key, read: object, levels: object) -> FloatArray:
+    """The product of a key's factors, squared about its centre where it has one.
+
+    The operations are elementwise and in the order of the factors, so that the result does not
+    depend on blocks.
+    """
+    assert callable(read) and callable(levels)
+    product: FloatArray | None = None
+    for factor in key.factors:
+        values = _factor(factor, read(factor.column), levels)
+        product = values if product is None else product * values
+    assert product is not None
+    if key.centre is None:
+        return product
+    about = product - key.centre
+    return about * about
+
+
+def _factor(factor: Factor, values: FloatArray, levels: object) -> FloatArray:
+    """One factor: the indicator of a level, or a number under its rung."""
+    if factor.level:
+        assert callable(levels)
+        return (values == levels(factor.column).index(factor.level)).astype(np.float64)
+    if factor.rung == "identity":
+        return values
+    return apply_rung(factor.rung, values, factor.exponent)
