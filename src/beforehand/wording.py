@@ -37,6 +37,11 @@ def number(value: object, digits: int = 3) -> str:
     return f"{value:.{digits - 1}e}"
 
 
+def limit_text(value: object) -> str:
+    """A limit as a person wrote it in the plan: 0.05, not 0.0500."""
+    return f"{value:.6g}" if isinstance(value, int | float) else "not available"
+
+
 def p_value(value: object) -> str:
     """A p for a sentence: three decimals, or that it is below a thousandth."""
     if value is None or not isinstance(value, int | float):
@@ -72,10 +77,10 @@ def _p_against(p: float, limit: float) -> str:
     side = "above" if p > limit else "not above"
     shown = p_value(p)
     if shown == "below 0.001":
-        return f"below 0.001 is not above {number(limit)}" if p <= limit else f"{p:.3g} is above {number(limit)}"
+        return f"below 0.001 is not above {limit_text(limit)}" if p <= limit else f"{p:.3g} is above {limit_text(limit)}"
     if float(shown) == round(limit, 3) and p != limit:
         shown = f"{p:.6g}"
-    return f"{shown} is {side} {number(limit)}"
+    return f"{shown} is {side} {limit_text(limit)}"
 
 
 def _checks(ruling: Ruling) -> str:
@@ -87,7 +92,7 @@ def _checks(ruling: Ruling) -> str:
         else f"{CHECK_WORDS.get(name, name)} cannot be made"
         for name, value in named
     ]
-    limit = "" if ruling.limit is None else f" (limit {number(ruling.limit)})"
+    limit = "" if ruling.limit is None else f" (limit {limit_text(ruling.limit)})"
     return (" and ".join(parts) + limit) if parts else "no check is declared"
 
 
@@ -180,7 +185,7 @@ def _final(what: str, good: str, bad: str) -> Mapping[str, Sentence]:
         if p is None:
             low, high = ruling.evidence.get("low"), ruling.evidence.get("high")
             return f"{number(statistic)}, declared range {number(low)} to {number(high)}"
-        return f"p {p_value(p)}, limit {number(ruling.limit)}"
+        return f"p {p_value(p)}, limit {limit_text(ruling.limit)}"
 
     def about(ruling: Ruling) -> str:
         return "" if ruling.subject == "the model" else f" of {ruling.subject}"
@@ -251,7 +256,7 @@ SENTENCES: Mapping[str, Sentence] = {
     "kept_always": lambda r: f"{r.subject} stays by rule: {r.because}",
     "kept_below_bound": lambda r: (
         f"{r.subject} stays by rule, p {p_value(r.evidence.get('p'))} is not above "
-        f"{number(r.limit)}: {r.because}"
+        f"{limit_text(r.limit)}: {r.because}"
         if r.evidence.get("p") is not None
         else f"{r.subject} stays by rule: {r.because}"
     ),
@@ -306,11 +311,11 @@ SENTENCES: Mapping[str, Sentence] = {
     ),
     "row_leaves_coefficient": lambda r: (
         f"Row {r.subject} leaves: without it a coefficient (of {r.evidence.get('of')}) moves by "
-        f"{number(r.evidence['change_coefficient'])} standard errors, limit {number(r.limit)}."
+        f"{number(r.evidence['change_coefficient'])} standard errors, limit {limit_text(r.limit)}."
     ),
     "row_leaves_r_squared": lambda r: (
         f"Row {r.subject} leaves: without it R² changes by {number(r.evidence['change_r_squared'])}, "
-        f"limit {number(r.limit)}."
+        f"limit {limit_text(r.limit)}."
     ),
     "row_leaves_significance_changes": lambda r: (
         f"Row {r.subject} leaves: without it the significance of {r.evidence['significance_changes']} changes."
@@ -362,3 +367,47 @@ def sentence(ruling: Ruling) -> str:
     """The one plain sentence of a ruling, made from its verdict and evidence."""
     said = SENTENCES[ruling.verdict](ruling)
     return said if said.endswith((".", "…")) else said + "."
+
+
+def cautions(
+    *,
+    status: str,
+    cap_reached: bool,
+    exact: bool,
+    unmended: tuple[str, ...],
+    failed: list[Ruling],
+    selected: bool,
+    filled: bool,
+    rows_per_coefficient: float,
+    alternatives: int,
+) -> tuple[str, ...]:
+    """What must be said beside an answer: what this run calls for first, then what always holds."""
+    said: list[str] = []
+    if cap_reached:
+        said.append("More rows change the answer than the plan allows to remove: the answer hangs on single rows.")
+    if exact:
+        said.append("The model fits without residuals: see whether the outcome is computed from a predictor.")
+    said += [f"{name} still bends: no rung of the ladder mends it." for name in unmended]
+    said += [sentence(ruling) for ruling in failed]
+    if rows_per_coefficient < FEW_ROWS_PER_COEFFICIENT:
+        said.append(
+            f"There are {number(rows_per_coefficient)} rows for each coefficient; below "
+            f"{FEW_ROWS_PER_COEFFICIENT} coefficients are unstable (common practice)."
+        )
+    if filled:
+        said.append("Filled cells count as observed, so standard errors are somewhat too small.")
+    if selected and status == "adopted":
+        said.append("The p-values come after a selection and are optimistic; so is R².")
+    if alternatives:
+        said.append("Read the declared alternatives beside this answer.")
+    return (*said, *ALWAYS)
+
+
+# Rows per coefficient below which estimates are called unstable (common practice: 10 to 20).
+FEW_ROWS_PER_COEFFICIENT = 10
+
+ALWAYS = (
+    "Association is not causation.",
+    "The equation holds inside the range of the data it comes from.",
+    "Decisions on people's health, safety, credit, work or housing need qualified review and local rules.",
+)

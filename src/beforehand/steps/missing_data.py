@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from beforehand.fit.columns import Factor, Key
-from beforehand.fit.descriptives import mean_and_sd
+from beforehand.fit.descriptives import shape_of
 from beforehand.fit.moments import ArraySource, moments_of
 from beforehand.fit.tableau import dependence, tableau_of
 from beforehand.plan import FillValue, Plan
@@ -269,7 +269,7 @@ def _by_regression(
         keys.remove(found.key)
     keys = keys[: max(0, int(observed.sum()) - 2)]
     tableau = tableau_of(moments, target, keys, intercept=True)
-    intercept, slopes = tableau.intercept, dict(zip(keys, tableau.estimates, strict=True))
+    intercept, slopes = float(tableau.constant), dict(zip(keys, tableau.estimates, strict=True))
     return np.array(
         [
             math.fsum([intercept, *(slopes[key] * float(everywhere[key][place]) for key in keys)])
@@ -295,10 +295,9 @@ def _missing(
         values_left = column.values[left & ~masks[name]]
         values_stay = column.values[stays & ~masks[name]]
         if len(values_left) > 1 and len(values_stay) > 1:
-            mean_left, sd_left = mean_and_sd(values_left)
-            mean_stay, sd_stay = mean_and_sd(values_stay)
-            pooled = math.sqrt((sd_left**2 + sd_stay**2) / 2.0)
-            difference = (mean_left - mean_stay) / pooled if pooled > 0 else None
+            left_shape, stay_shape = shape_of(values_left), shape_of(values_stay)
+            pooled = math.sqrt((left_shape.sd**2 + stay_shape.sd**2) / 2.0)
+            difference = (left_shape.mean - stay_shape.mean) / pooled if pooled > 0 else None
     missing = int(masks[name].sum())
     return Missing(
         predictor=name,

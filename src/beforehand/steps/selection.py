@@ -79,7 +79,7 @@ def _near_misses(state: State, plan: Plan, fitted: Fitted, rulings: Rulings) -> 
         if test.p is None or test.partial_f2 is None or test.p > plan.weak_model.near:
             continue
         needed = needed_n(
-            test.partial_f2, test.df, coefficients=fitted.fit.p, alpha=plan.alpha, power=POWER
+            partial_f2=test.partial_f2, df=test.df, p=fitted.fit.p, alpha=plan.alpha, power=POWER
         )
         misses.append(NearMiss(predictor=name, p=test.p, partial_f2=test.partial_f2, rows_needed=needed))
         rulings.add(

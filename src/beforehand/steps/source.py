@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 
 import numpy as np
 from numpy.typing import NDArray
 
 from beforehand.fit.columns import Factor, FloatArray, Key
-from beforehand.fit.ladder import apply_rung
+from beforehand.fit import ladder
 from beforehand.steps.missing_data import Base
 from beforehand.table import Table
 
@@ -19,18 +19,37 @@ class TableSource:
     Parameters
     ----------
     table : Table
-    base : Base
-        Rows kept and cells filled.
+    kept : array of int, shape (n_rows,)
+        Rows of the table in use, ascending.
+    patched : mapping of column to array
+        Columns whose missing cells were filled, over all rows of the table.
     """
 
-    def __init__(self, table: Table, base: Base) -> None:
+    def __init__(
+        self,
+        table: Table,
+        kept: NDArray[np.int64],
+        patched: Mapping[str, NDArray[np.float64]],
+    ) -> None:
         self._table = table
-        self._kept = base.kept
-        self._whole = len(base.kept) == table.n_rows
-        self._patched: Mapping[str, NDArray[np.float64]] = {
+        self._kept = kept
+        self._whole = len(kept) == table.n_rows
+        self._patched = patched
+
+    @classmethod
+    def of(cls, table: Table, base: Base) -> TableSource:
+        """The source of a run's base."""
+        patched = {
             fill.predictor: _patched(table.columns[fill.predictor].values, fill.positions, fill.values)
             for fill in base.fills
         }
+        return cls(table, base.kept, patched)
+
+    def without(self, gone: tuple[int, ...]) -> TableSource:
+        """The same columns without some rows of the base."""
+        if not gone:
+            return self
+        return TableSource(self._table, np.delete(self._kept, gone), self._patched)
 
     @property
     def n_rows(self) -> int:
@@ -83,13 +102,16 @@ def _patched(
     return whole
 
 
-def evaluate(key: Key, read: object, levels: object) -> FloatArray:
+ReadColumn = Callable[[str], FloatArray]
+ReadLevels = Callable[[str], tuple[str, ...]]
+
+
+def evaluate(key: Key, read: ReadColumn, levels: ReadLevels) -> FloatArray:
     """The product of a key's factors, squared about its centre where it has one.
 
     The operations are elementwise and in the order of the factors, so that the result does not
     depend on blocks.
     """
-    assert callable(read) and callable(levels)
     product: FloatArray | None = None
     for factor in key.factors:
         values = _factor(factor, read(factor.column), levels)
@@ -101,11 +123,10 @@ def evaluate(key: Key, read: object, levels: object) -> FloatArray:
     return about * about
 
 
-def _factor(factor: Factor, values: FloatArray, levels: object) -> FloatArray:
+def _factor(factor: Factor, values: FloatArray, levels: ReadLevels) -> FloatArray:
     """One factor: the indicator of a level, or a number under its rung."""
     if factor.level:
-        assert callable(levels)
         return (values == levels(factor.column).index(factor.level)).astype(np.float64)
     if factor.rung == "identity":
         return values
-    return apply_rung(factor.rung, values, factor.exponent)
+    return ladder.apply(factor.rung, values, factor.exponent)

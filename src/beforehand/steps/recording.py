@@ -1,0 +1,576 @@
+"""The recording bench: every fit and check kept under a number, computed from exact moments.
+
+The table's cross-products are computed once and without rounding; a model on those rows, or on
+those rows less a few, is small work on them. Rows are touched only where a measure needs them.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, field, replace
+from typing import TypeVar
+
+import numpy as np
+
+from beforehand.fit import assumptions, exponents, influence, ladder, robust
+from beforehand.fit.columns import FloatArray, Key
+from beforehand.fit.conditioning import Condition, condition, inflation_of
+from beforehand.fit.sums import exact_sum
+from beforehand.fit.elementary import log
+from beforehand.fit.moments import Moments, moments_of
+from beforehand.fit.results import Check, Fit
+from beforehand.fit.rows import RowValues, row_values
+from beforehand.fit.subsets import best_subsets
+from beforehand.fit.tableau import RankDeficient, Tableau, dependence, fit_of, tableau_of
+from beforehand.plan import Plan
+from beforehand.steps.bench import Checked, Comparison, Fitted, Linked, Measures, Positions
+from beforehand.steps.designing import Designer
+from beforehand.steps.keeping import Keeping
+from beforehand.steps.source import TableSource
+from beforehand.steps.state import Model, Rows, State, Transform, factor_of
+
+_K = TypeVar("_K")
+_V = TypeVar("_V")
+
+# How many tableaus and sets of row values are kept at hand; older ones are computed anew.
+AT_HAND = 6
+
+# Models that differ from one at hand by at most so many columns are reached by taking them out.
+NEAR = 40
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class RecordedFit:
+    """A fit with the step that first asked for it and why."""
+
+    id: str
+    step: str
+    why: str
+    model: Model
+    fit: Fit
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class RecordedCheck:
+    """A check with its place in the run."""
+
+    id: str
+    stage: str
+    subject: str | None
+    fit: str
+    alpha: float
+    check: Check
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class CollinearityRecord:
+    """Correlations, variance inflation and condition indices of one model at one stage."""
+
+    stage: str
+    model: Model
+    correlations: tuple[tuple[str, str, float], ...]
+    inflation: tuple[tuple[str, float], ...]
+    condition: Condition
+
+
+@dataclass(slots=True)
+class Record:
+    """Everything that a run leaves behind, in the order first asked for."""
+
+    fits: list[RecordedFit] = field(default_factory=list)
+    checks: list[RecordedCheck] = field(default_factory=list)
+    collinearity: list[CollinearityRecord] = field(default_factory=list)
+    tables: dict[str, object] = field(default_factory=dict)
+
+
+class RecordingBench:
+    """Supplies the steps of a run with numbers and keeps each of them.
+
+    Parameters
+    ----------
+    plan : Plan
+    source : TableSource
+        The columns over the base of the run.
+    order : array of shape (n_rows,) or None
+        Rank of each row in the declared order, for the check of independence.
+    groups : array of shape (n_rows,) or None
+        Cluster of each row, where the plan asks for clustered errors.
+    progress : callable or None
+        Hears what is being done, a few words at a time.
+    """
+
+    def __init__(
+        self,
+        plan: Plan,
+        source: TableSource,
+        *,
+        order: FloatArray | None = None,
+        groups: FloatArray | None = None,
+        progress: Callable[[str], None] | None = None,
+    ) -> None:
+        self.step = ""
+        self.record = Record()
+        self._plan = plan
+        self._base = source
+        self._order, self._groups = order, groups
+        self._progress = progress
+        self._designer = Designer(plan, source)
+        self._moments: Moments | None = None
+        self._reduced: dict[tuple[int, ...], Moments] = {}
+        self._sources: dict[tuple[int, ...], TableSource] = {}
+        self._fitted: dict[Model, Fitted] = {}
+        self._checked: dict[tuple[str, str, str | None, str], Checked] = {}
+        self._tableaus: dict[Model, Tableau] = {}
+        self._row_values: dict[Model, RowValues] = {}
+        self._inflation: dict[Model, tuple[tuple[str, float], ...]] = {}
+
+    # -- what a step asks for ---------------------------------------------------------------
+
+    def design(self, state: State) -> Model:
+        """The working model of a state."""
+        return self._designer.model(state)
+
+    @property
+    def errors(self) -> str:
+        """The standard errors that the plan asks for from the start."""
+        return self._designer.errors
+
+    def label(self, position: int) -> str:
+        """The label of a row of the base."""
+        return self._base.label(position)
+
+    def fit(self, model: Model, why: str) -> Fitted:
+        """Least squares of a model; asked for twice it is one fit, recorded once."""
+        known = self._fitted.get(model)
+        if known is not None:
+            return known
+        fit = fit_of(self.tableau(model), blocks_of(model))
+        if model.errors != "classical" and not fit.exact:
+            fit = self._robust(model, fit, model.errors)
+        return self._keep(model, fit, why)
+
+    def robust(self, fitted: Fitted, errors: str, why: str) -> Fitted:
+        """The same coefficients with other standard errors, as a fit of its own."""
+        model = replace(fitted.model, errors=errors)
+        known = self._fitted.get(model)
+        if known is not None:
+            return known
+        try:
+            fit = self._robust(model, fitted.fit, errors)
+        except robust.NotEstimable:
+            return fitted
+        return self._keep(model, fit, why)
+
+    def two_valued(self, name: str, rows: Rows) -> bool:
+        """Whether a numeric predictor has fewer than three values in these rows."""
+        values = self._source(rows).raw(name)
+        low, high = values.min(), values.max()
+        return bool(np.all((values == low) | (values == high)))
+
+    def domain(self, name: str, rung: str, rows: Rows) -> str:
+        """Why a rung cannot be applied; '' when it can. The outcome goes by the name ''."""
+        values = self._source(rows).raw(name or self._plan.outcome.column)
+        return ladder.domain(rung, values, way_back=not name)
+
+    def learn(self, model: Model, name: str, rung: str) -> Transform:
+        """The rung with its exponent learned from this model."""
+        if rung != "box_cox":
+            return Transform(rung)
+        if name:
+            return Transform(rung, exponents.predictor_exponent(self._profile(model, name)))
+        values = self._source(model.rows).raw(self._plan.outcome.column)
+        found = exponents.outcome_exponent(
+            self._profile(model, ""), n=model.rows.n, log_total=exact_sum(log(values))
+        )
+        return Transform(rung, found.exponent)
+
+    def curvature(self, fitted: Fitted, name: str, alpha: float) -> Checked:
+        """t test of the predictor's added square about its mean."""
+        model = fitted.model
+        self._prepare_squares(model)
+
+        def make() -> Check:
+            term = model.term(name)
+            if self.two_valued(name, model.rows):
+                return Check(
+                    name="curvature", statistic=None, p=None, not_applicable=f"{name} has two values only"
+                )
+            square = self._square(term.keys[0])
+            moments = self._with(model.rows, (*model.keys, model.outcome, square))
+            return assumptions.curvature(self.tableau(model), square, moments)
+
+        return self._check("curvature", fitted, name, alpha, make)
+
+    def spread(self, fitted: Fitted, name: str | None, test: str, alpha: float) -> Checked:
+        """Equal spread along one predictor, or along the whole design."""
+        model = fitted.model
+        keys = model.keys if name is None else model.term(name).keys
+        judge = assumptions.white if test == "white" else assumptions.breusch_pagan
+        return self._check(
+            test, fitted, name, alpha,
+            lambda: judge(self._source(model.rows), keys, self.values(model), exact=fitted.fit.exact),
+        )  # fmt: skip
+
+    def normality(self, fitted: Fitted, test: str, alpha: float) -> Checked:
+        """Normal residuals."""
+        judge = assumptions.shapiro_wilk if test == "shapiro_wilk" else assumptions.jarque_bera
+        return self._check(
+            test, fitted, None, alpha,
+            lambda: judge(self.values(fitted.model).residual, exact=fitted.fit.exact),
+        )  # fmt: skip
+
+    def independence(self, fitted: Fitted, test: str, lags: int, alpha: float) -> Checked:
+        """Serial independence in the declared order."""
+
+        def make() -> Check:
+            model = fitted.model
+            if self._order is None:
+                return Check(
+                    name=test, statistic=None, p=None, not_applicable="the plan declares no order of the rows"
+                )
+            order = np.delete(self._order, model.rows.gone)
+            residual = self.values(model).residual
+            if test == "durbin_watson":
+                return assumptions.durbin_watson(residual, order, exact=fitted.fit.exact)
+            return assumptions.breusch_godfrey(
+                self._source(model.rows), model.keys, self.values(model), order,
+                lags=lags, intercept=model.intercept, exact=fitted.fit.exact,
+            )  # fmt: skip
+
+        return self._check(test, fitted, None, alpha, make)
+
+    def reset(self, fitted: Fitted, alpha: float) -> Checked:
+        """Powers of the fitted values added to the model."""
+        model = fitted.model
+        return self._check(
+            "reset", fitted, None, alpha,
+            lambda: assumptions.reset(self._source(model.rows), self.tableau(model), self.values(model)),
+        )  # fmt: skip
+
+    def dependence(self, model: Model) -> Linked | None:
+        """The first exact linear dependence among the columns, in plan order."""
+        moments = self._with(model.rows, (*model.keys, model.outcome))
+        found = dependence(moments, model.keys, intercept=model.intercept)
+        if found is None:
+            return None
+        owner = {key: term.name for term in model.terms for key in term.keys}
+        weights = tuple((column_name(key), weight) for key, weight in found.weights)
+        members = (owner[found.key], *(owner[key] for key, _ in found.weights if key is not None))
+        return Linked(
+            predictor=owner[found.key],
+            column=column_name(found.key),
+            weights=weights,
+            constant=all(key is None for key, _ in found.weights),
+            members=tuple(dict.fromkeys(members)),
+        )
+
+    def correlations(self, model: Model) -> Sequence[tuple[str, str, float]]:
+        """Correlations of every pair of single-column predictors, in plan order."""
+        moments = self._with(model.rows, model.keys)
+        single = [term for term in model.terms if term.single]
+        return tuple(
+            (one.name, other.name, moments.correlation(one.keys[0], other.keys[0]))
+            for place, one in enumerate(single)
+            for other in single[place + 1 :]
+        )
+
+    def inflation(self, model: Model) -> Sequence[tuple[str, float]]:
+        """VIF of each predictor; for a block the generalized VIF to the power 1/df."""
+        known = self._inflation.get(model)
+        if known is None:
+            moments = self._with(model.rows, model.keys)
+            found = inflation_of(moments, blocks_of(model), intercept=model.intercept)
+            known = self._inflation[model] = tuple((name, found[name]) for name in model.names)
+        return known
+
+    def measures(self, fitted: Fitted) -> Measures:
+        """Influence measures of every row in use."""
+        model = fitted.model
+        self._tell(f"influence of {model.rows.n:,} rows")
+        found = influence.influence(self._source(model.rows), self.tableau(model), self.values(model))
+        positions = np.delete(np.arange(model.rows.base, dtype=np.int64), model.rows.gone)
+        return Measures(
+            positions=positions,
+            leverage=found.leverage,
+            studentized=found.external,
+            cooks_distance=found.cooks_distance,
+            dffits=found.dffits,
+            largest_dfbetas=found.largest_dfbetas,
+            covariance_ratio=found.covariance_ratio,
+            sole=found.sole,
+        )
+
+    def without_each(
+        self, fitted: Fitted, positions: Positions, alpha: float, *, significance: bool
+    ) -> Sequence[Comparison]:
+        """Each of these rows (indices among the rows in use) left out alone."""
+        model = fitted.model
+        kept = np.delete(np.arange(model.rows.base, dtype=np.int64), model.rows.gone)
+        blocks = blocks_of(model)
+        owner = {key: term.name for term in model.terms for key in term.keys}
+        found = influence.without_each(
+            self._source(model.rows), self.tableau(model), self.values(model), positions, blocks
+        )
+        return tuple(
+            Comparison(
+                position=int(kept[one.row]),
+                change_r_squared=one.change_r_squared,
+                change_coefficient=one.change_coefficient,
+                of="" if one.key is None else owner[one.key],
+                significance_changes=_significance_changes(fitted, one.p, alpha),
+                sign_changes=_sign_changes(fitted, one.p, one.signs, alpha, owner),
+            )
+            for one in found
+        )
+
+    def best_subset(
+        self, model: Model, alpha: float, forced: Callable[[tuple[str, ...]], bool]
+    ) -> Model | None:
+        """Largest adjusted R² among lawful subsets whose other predictors are significant."""
+        moments = self._with(model.rows, (*model.keys, model.outcome))
+        places = {key: place for place, key in enumerate(model.keys)}
+        keeping = Keeping(self._plan)
+        found = best_subsets(
+            moments.cross((*model.keys, model.outcome), centred=model.intercept),
+            [tuple(places[key] for key in term.keys) for term in model.terms],
+            n=model.rows.n,
+            constant=int(model.intercept),
+            alpha=alpha,
+            lawful=lambda chosen: forced(tuple(model.names[place] for place in chosen)),
+            held=lambda place: keeping.hold(model.names[place], model.names, None) is not None,
+        )
+        if not found:
+            return None
+        models = [
+            model.without(*(n for place, n in enumerate(model.names) if place not in subset.places))
+            for subset in found
+        ]
+        fits = [fit_of(self.tableau(one), blocks_of(one)) for one in models]
+        # Ties to exactness go to the smaller model, then to the earlier predictors.
+        best = min(
+            range(len(models)),
+            key=lambda at: (-fits[at].adjusted_r_squared, len(models[at].terms), found[at].places),
+        )
+        return models[best]
+
+    def keep_check(self, kind: str, record: object) -> None:
+        """Put a table of the step in the record."""
+        if kind == "collinearity" and isinstance(record, Model):
+            if record.terms:
+                self.record.collinearity.append(self._collinearity(record))
+        else:
+            self.record.tables[kind] = record
+
+    # -- what the answer asks for ------------------------------------------------------------
+
+    def tableau(self, model: Model) -> Tableau:
+        """The swept cross-products of a model, reached from a near one where there is one."""
+        plain = replace(model, errors="classical")
+        known = self._tableaus.get(plain)
+        if known is None:
+            known = self._from_near(plain) or tableau_of(
+                self._with(plain.rows, (*plain.keys, plain.outcome)),
+                plain.outcome,
+                plain.keys,
+                intercept=plain.intercept,
+            )
+            _remember(self._tableaus, plain, known)
+        return known
+
+    def values(self, model: Model) -> RowValues:
+        """Fitted values, residuals and leverages of the rows in use."""
+        plain = replace(model, errors="classical")
+        known = self._row_values.get(plain)
+        if known is None:
+            known = row_values(self._source(plain.rows), self.tableau(plain))
+            _remember(self._row_values, plain, known)
+        return known
+
+    def moments(self, model: Model) -> Moments:
+        """Exact moments of a model's columns and outcome in its rows."""
+        return self._with(model.rows, (*model.keys, model.outcome))
+
+    # -- inside ------------------------------------------------------------------------------
+
+    def _keep(self, model: Model, fit: Fit, why: str) -> Fitted:
+        fitted = Fitted(f"F{len(self.record.fits) + 1:03d}", model, fit)
+        self._fitted[model] = fitted
+        self.record.fits.append(
+            RecordedFit(id=fitted.id, step=self.step, why=why, model=model, fit=fit)
+        )
+        self._tell(f"{self.step.replace('_', ' ')}: {why}")
+        return fitted
+
+    def _check(
+        self, name: str, fitted: Fitted, subject: str | None, alpha: float, make: Callable[[], Check]
+    ) -> Checked:
+        """Make a check once for a fit and subject, and number it."""
+        known = self._checked.get((name, fitted.id, subject, self.step))
+        if known is None:
+            checked = make()
+            known = Checked(f"C{len(self.record.checks) + 1:03d}", checked, alpha, fitted.id)
+            self._checked[(name, fitted.id, subject, self.step)] = known
+            self.record.checks.append(
+                RecordedCheck(
+                    id=known.id, stage=self.step, subject=subject, fit=fitted.id, alpha=alpha, check=checked
+                )
+            )
+        return known
+
+    def _tell(self, what: str) -> None:
+        if self._progress is not None:
+            self._progress(what)
+
+    def _with(self, rows: Rows, keys: Sequence[Key]) -> Moments:
+        """Moments of these rows that hold at least these columns."""
+        if self._moments is None:
+            self._tell(f"cross-products of {rows.base:,} rows")
+            self._moments = moments_of(self._base, tuple(dict.fromkeys(keys)))
+        missing = [key for key in dict.fromkeys(keys) if key not in self._moments]
+        if missing:
+            self._moments = self._moments.extended(self._base, missing)
+        if not rows.gone:
+            return self._moments
+        reduced = self._reduced.get(rows.gone)
+        if reduced is None or any(key not in reduced for key in keys):
+            positions = np.array(rows.gone, dtype=np.int64)
+            values = np.column_stack([self._base.rows(key, positions) for key in self._moments.keys])
+            reduced = self._moments.without(values)
+            _remember(self._reduced, rows.gone, reduced)
+        return reduced
+
+    def _from_near(self, model: Model) -> Tableau | None:
+        """A tableau at hand whose model holds this one and a few columns more."""
+        wanted = set(model.keys)
+        best: tuple[int, Model] | None = None
+        for other in self._tableaus:
+            if (other.rows, other.outcome, other.intercept) != (model.rows, model.outcome, model.intercept):
+                continue
+            extra = len(other.keys) - len(model.keys)
+            if 0 <= extra <= NEAR and wanted <= set(other.keys) and (best is None or extra < best[0]):
+                best = (extra, other)
+        if best is None:
+            return None
+        gone = [key for key in best[1].keys if key not in wanted]
+        return self._tableaus[best[1]].without(gone)
+
+    def _source(self, rows: Rows) -> TableSource:
+        """The columns over these rows."""
+        if not rows.gone:
+            return self._base
+        known = self._sources.get(rows.gone)
+        if known is None:
+            known = self._base.without(rows.gone)
+            _remember(self._sources, rows.gone, known)
+        return known
+
+    def _square(self, key: Key) -> Key:
+        """The added square of a column, about its mean in the base."""
+        assert self._moments is not None
+        return Key(key.factors, centre=self._moments.mean(key))
+
+    def _prepare_squares(self, model: Model) -> None:
+        """One pass over the rows for the added squares of every number in the model."""
+        self._with(model.rows, (*model.keys, model.outcome))
+        squares = [self._square(term.keys[0]) for term in model.terms if term.kind == "number"]
+        self._with(model.rows, (*model.keys, model.outcome, *squares))
+
+    def _profile(self, model: Model, name: str) -> Callable[[float], float]:
+        """Residual sum of squares of the model with one column under a Box-Cox power."""
+
+        def rss_of(exponent: float) -> float:
+            transform = Transform("box_cox", exponent)
+            column = name or self._plan.outcome.column
+            key = Key((factor_of(column, transform),))
+            source = self._source(model.rows)
+            if name:
+                keys = tuple(key if k == model.term(name).keys[0] else k for k in model.keys)
+                outcome = model.outcome
+            else:
+                keys, outcome = model.keys, key
+            # A trial power is looked at once, so its cross-products are not kept with the others.
+            moments = self._with(model.rows, (*model.keys, model.outcome)).extended(source, (key,))
+            try:
+                return float(tableau_of(moments, outcome, keys, intercept=model.intercept).rss)
+            except RankDeficient:
+                return float("inf")
+
+        return rss_of
+
+    def _robust(self, model: Model, fit: Fit, errors: str) -> Fit:
+        """The fit with other standard errors."""
+        plain = replace(model, errors="classical")
+        lags = getattr(self._plan.errors, "autocorrelation_lags", None)
+        return robust.robust_fit(
+            fit,
+            self._source(model.rows),
+            self.tableau(plain),
+            self.values(plain),
+            blocks_of(model),
+            errors=errors,
+            groups=None if self._groups is None else np.delete(self._groups, model.rows.gone),
+            order=None if self._order is None else np.delete(self._order, model.rows.gone),
+            lags=lags,
+        )
+
+    def _collinearity(self, model: Model) -> CollinearityRecord:
+        """Correlations, inflation and condition of a model."""
+        moments = self._with(model.rows, (*model.keys, model.outcome))
+        return CollinearityRecord(
+            stage=self.step,
+            model=model,
+            correlations=tuple(self.correlations(model)),
+            inflation=tuple(self.inflation(model)),
+            condition=condition(moments, model.keys, intercept=model.intercept),
+        )
+
+
+def _significance_changes(
+    fitted: Fitted, without: Mapping[str, float | None], alpha: float
+) -> tuple[str, ...]:
+    """Predictors that are significant in one of two fits only."""
+    return tuple(
+        name
+        for name, p in without.items()
+        if p is not None and (p <= alpha) != fitted.significant(name, alpha)
+    )
+
+
+def _sign_changes(
+    fitted: Fitted,
+    without: Mapping[str, float | None],
+    estimates: Mapping[Key, float],
+    alpha: float,
+    owner: Mapping[Key, str],
+) -> tuple[str, ...]:
+    """Predictors whose sign differs and which are significant in either of two fits."""
+    found: list[str] = []
+    for coefficient in fitted.fit.coefficients:
+        key = coefficient.key
+        if key is None or coefficient.estimate * estimates.get(key, 0.0) >= 0:
+            continue
+        name, p = owner[key], without.get(owner[key])
+        if fitted.significant(name, alpha) or (p is not None and p <= alpha):
+            found.append(name)
+    return tuple(dict.fromkeys(found))
+
+
+def blocks_of(model: Model) -> Mapping[str, tuple[Key, ...]]:
+    """Columns of each predictor, in plan order."""
+    return {term.name: term.keys for term in model.terms}
+
+
+def column_name(key: Key | None) -> str:
+    """A design column as it is named in the record: predictor, level, parts."""
+    if key is None:
+        return "intercept"
+    return " × ".join(
+        f"{factor.column} = {factor.level}" if factor.level else factor.column for factor in key.factors
+    )
+
+
+def _remember(cache: dict[_K, _V], key: _K, value: _V) -> None:
+    """Keep the newest few."""
+    cache[key] = value
+    while len(cache) > AT_HAND:
+        del cache[next(iter(cache))]
