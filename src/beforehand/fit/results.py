@@ -72,6 +72,8 @@ class Fit:
         Shape (p, p), of the coefficients, by ``errors``.
     exact : bool
         The residuals vanish to the precision of the table: no t, p or F exists.
+    df_inference : int
+        Degrees of freedom of t tests and intervals: ``df_residual``, or clusters less one.
     errors : str
         ``classical``, ``hc0`` to ``hc3``, ``cluster`` or ``autocorrelation``.
     """
@@ -79,6 +81,7 @@ class Fit:
     n: int
     p: int
     df_residual: int
+    df_inference: int
     coefficients: tuple[Coefficient, ...]
     tests: Mapping[str, TermTest] = field(default_factory=dict)
     rss: float

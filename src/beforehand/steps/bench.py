@@ -81,7 +81,7 @@ class Measures:
     studentized: FloatArray
     cooks_distance: FloatArray
     dffits: FloatArray
-    largest_dfbetas: FloatArray
+    largest_dfbetas: FloatArray | None
     covariance_ratio: FloatArray
     sole: NDArray[np.bool_]
 
@@ -162,14 +162,14 @@ class Bench(Protocol):
         """VIF of each predictor; for a block the generalized VIF to the power 1/df."""
         ...
 
-    def measures(self, fitted: Fitted) -> Measures:
-        """Influence measures of every row."""
+    def measures(self, fitted: Fitted, *, dfbetas: bool) -> Measures:
+        """Influence measures of every row; DFBETAS only where a limit asks for them."""
         ...
 
     def without_each(
-        self, fitted: Fitted, positions: Positions, alpha: float, *, significance: bool
+        self, fitted: Fitted, measures: Measures, flagged: Positions, alpha: float
     ) -> Sequence[Comparison]:
-        """Each of these rows left out alone, in the order given."""
+        """Each flagged row (indices into the measures) left out alone, in the order given."""
         ...
 
     def robust(self, fitted: Fitted, errors: str, why: str) -> Fitted:

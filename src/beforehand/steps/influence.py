@@ -57,11 +57,9 @@ def influence(state: State, plan: Plan, bench: Bench) -> tuple[State, tuple[Ruli
         if fitted.fit.exact:
             rulings.add("influence", "all rows", "exact_fit", fits=(fitted.id,))
             break
-        measures = bench.measures(fitted)
+        measures = bench.measures(fitted, dfbetas=plan.influence.flag_when.dfbetas is not None)
         flagged = _flagged(measures, plan, model.rows.n, model.p)
-        compared = bench.without_each(
-            fitted, flagged, plan.alpha, significance=bool(plan.influence.remove_when.significance_changes)
-        )
+        compared = bench.without_each(fitted, measures, flagged, plan.alpha)
         found = _first_change(compared, state, plan, bench, fitted, measures)
         if found is None:
             _stay(compared, measures, fitted, bench, rulings, removed, flagged)
@@ -88,10 +86,12 @@ def influence(state: State, plan: Plan, bench: Bench) -> tuple[State, tuple[Ruli
     return replace(state, rulings_made=rulings.count), tuple(rulings.made)
 
 
-def _passes(values: NDArray[np.float64], limit: Limit | None, n: int, p: int) -> NDArray[np.bool_]:
+def _passes(
+    values: NDArray[np.float64] | None, limit: Limit | None, n: int, p: int
+) -> NDArray[np.bool_] | bool:
     """Which values pass a limit, by size; a limit that is not set flags nothing."""
-    if limit is None:
-        return np.zeros(values.shape, dtype=bool)
+    if limit is None or values is None:
+        return False
     with np.errstate(invalid="ignore"):
         return np.abs(values) > limit.value(n, p)
 

@@ -11,6 +11,7 @@ from dataclasses import dataclass, field, replace
 from typing import TypeVar
 
 import numpy as np
+from numpy.typing import NDArray
 
 from beforehand.fit import assumptions, exponents, influence, ladder, robust
 from beforehand.fit.columns import FloatArray, Key
@@ -283,14 +284,15 @@ class RecordingBench:
             known = self._inflation[model] = tuple((name, found[name]) for name in model.names)
         return known
 
-    def measures(self, fitted: Fitted) -> Measures:
+    def measures(self, fitted: Fitted, *, dfbetas: bool) -> Measures:
         """Influence measures of every row in use."""
         model = fitted.model
         self._tell(f"influence of {model.rows.n:,} rows")
-        found = influence.influence(self._source(model.rows), self.tableau(model), self.values(model))
-        positions = np.delete(np.arange(model.rows.base, dtype=np.int64), model.rows.gone)
+        found = influence.influence(
+            self._source(model.rows), self.tableau(model), self.values(model), dfbetas=dfbetas
+        )
         return Measures(
-            positions=positions,
+            positions=_kept(model.rows),
             leverage=found.leverage,
             studentized=found.external,
             cooks_distance=found.cooks_distance,
@@ -301,26 +303,51 @@ class RecordingBench:
         )
 
     def without_each(
-        self, fitted: Fitted, positions: Positions, alpha: float, *, significance: bool
+        self, fitted: Fitted, measures: Measures, flagged: Positions, alpha: float
     ) -> Sequence[Comparison]:
-        """Each of these rows (indices among the rows in use) left out alone."""
+        """Each flagged row left out alone; rows of leverage 1 come out of the exact moments."""
         model = fitted.model
-        kept = np.delete(np.arange(model.rows.base, dtype=np.int64), model.rows.gone)
-        blocks = blocks_of(model)
-        owner = {key: term.name for term in model.terms for key in term.keys}
+        sole = {int(row): self._sole(model, int(measures.positions[row])) for row in flagged if measures.sole[row]}
+        others = np.array([row for row in flagged.tolist() if row not in sole], dtype=np.int64)
+        compared = dict(zip(others.tolist(), self._compared(fitted, measures, others, alpha), strict=True))
+        compared |= sole
+        return tuple(compared[row] for row in flagged.tolist())
+
+    def _sole(self, model: Model, position: int) -> Comparison:
+        """A row of leverage 1: the predictor that hangs on it has no coefficient without it."""
+        linked = self.dependence(replace(model, rows=model.rows.without((position,))))
+        of = "" if linked is None else linked.predictor
+        return Comparison(position=position, change_r_squared=None, change_coefficient=None, of=of)
+
+    def _compared(
+        self, fitted: Fitted, measures: Measures, rows: Positions, alpha: float
+    ) -> Sequence[Comparison]:
+        """Rows whose removal leaves every coefficient estimable."""
+        if not len(rows):
+            return ()
+        model, tableau, values = fitted.model, self.tableau(fitted.model), self.values(fitted.model)
+        chosen = self._source(model.rows).select(rows)
         found = influence.without_each(
-            self._source(model.rows), self.tableau(model), self.values(model), positions, blocks
+            chosen,
+            tableau,
+            residual=values.residual[rows],
+            leverage=values.leverage[rows],
+            outcome=chosen.read(model.outcome, 0, len(rows)),
+            blocks=blocks_of(model),
         )
+        owner = [term.name for term in model.terms for _ in term.keys]
+        significance = _significance_changes(fitted, found, alpha)
+        signs = _sign_changes(fitted, found, owner, alpha)
         return tuple(
             Comparison(
-                position=int(kept[one.row]),
-                change_r_squared=one.change_r_squared,
-                change_coefficient=one.change_coefficient,
-                of="" if one.key is None else owner[one.key],
-                significance_changes=_significance_changes(fitted, one.p, alpha),
-                sign_changes=_sign_changes(fitted, one.p, one.signs, alpha, owner),
+                position=int(measures.positions[row]),
+                change_r_squared=float(found.change_r_squared[at]),
+                change_coefficient=float(found.change_coefficient[at]),
+                of=column_name(model.keys[int(found.column[at])]),
+                significance_changes=tuple(name for name, changes in significance.items() if changes[at]),
+                sign_changes=tuple(name for name, changes in signs.items() if changes[at]),
             )
-            for one in found
+            for at, row in enumerate(rows.tolist())
         )
 
     def best_subset(
@@ -525,34 +552,29 @@ class RecordingBench:
         )
 
 
+def _kept(rows: Rows) -> Positions:
+    """Positions of the rows in use, ascending."""
+    return np.delete(np.arange(rows.base, dtype=np.int64), rows.gone)
+
+
 def _significance_changes(
-    fitted: Fitted, without: Mapping[str, float | None], alpha: float
-) -> tuple[str, ...]:
-    """Predictors that are significant in one of two fits only."""
-    return tuple(
-        name
-        for name, p in without.items()
-        if p is not None and (p <= alpha) != fitted.significant(name, alpha)
-    )
+    fitted: Fitted, found: influence.WithoutEach, alpha: float
+) -> Mapping[str, NDArray[np.bool_]]:
+    """For each predictor, without which rows its significance is another."""
+    return {name: (p <= alpha) != fitted.significant(name, alpha) for name, p in found.p.items()}
 
 
 def _sign_changes(
-    fitted: Fitted,
-    without: Mapping[str, float | None],
-    estimates: Mapping[Key, float],
-    alpha: float,
-    owner: Mapping[Key, str],
-) -> tuple[str, ...]:
-    """Predictors whose sign differs and which are significant in either of two fits."""
-    found: list[str] = []
-    for coefficient in fitted.fit.coefficients:
-        key = coefficient.key
-        if key is None or coefficient.estimate * estimates.get(key, 0.0) >= 0:
-            continue
-        name, p = owner[key], without.get(owner[key])
-        if fitted.significant(name, alpha) or (p is not None and p <= alpha):
-            found.append(name)
-    return tuple(dict.fromkeys(found))
+    fitted: Fitted, found: influence.WithoutEach, owner: Sequence[str], alpha: float
+) -> Mapping[str, NDArray[np.bool_]]:
+    """For each predictor, without which rows a sign differs, where it is significant in either fit."""
+    changes: dict[str, NDArray[np.bool_]] = {}
+    slopes = [c.estimate for c in fitted.fit.coefficients if c.key is not None]
+    for place, name in enumerate(owner):
+        turned = (found.estimates[:, place] * slopes[place]) < 0.0
+        matters = (found.p[name] <= alpha) | fitted.significant(name, alpha)
+        changes[name] = changes.get(name, np.zeros(len(turned), dtype=bool)) | (turned & matters)
+    return changes
 
 
 def blocks_of(model: Model) -> Mapping[str, tuple[Key, ...]]:

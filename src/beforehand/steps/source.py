@@ -30,10 +30,12 @@ class TableSource:
         table: Table,
         kept: NDArray[np.int64],
         patched: Mapping[str, NDArray[np.float64]],
+        *,
+        whole: bool | None = None,
     ) -> None:
         self._table = table
         self._kept = kept
-        self._whole = len(kept) == table.n_rows
+        self._whole = len(kept) == table.n_rows if whole is None else whole
         self._patched = patched
 
     @classmethod
@@ -55,6 +57,10 @@ class TableSource:
     def n_rows(self) -> int:
         """Rows of the base."""
         return len(self._kept)
+
+    def select(self, positions: NDArray[np.int64]) -> TableSource:
+        """The same columns in some rows only, in the order given."""
+        return TableSource(self._table, self._kept[positions], self._patched, whole=False)
 
     def raw(self, column: str, start: int = 0, stop: int | None = None) -> FloatArray:
         """A table column over base rows, fills applied: numbers, or codes of levels as floats."""

@@ -1,0 +1,222 @@
+"""Influence of single rows, and the fit without each, in closed form from one fit.
+
+Formulas as in Belsley, Kuh & Welsch (1980), Regression Diagnostics, ch. 2, and Cook (1977).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.special import fdtrc, stdtr
+
+from beforehand.fit.columns import FloatArray, Key, Source
+from beforehand.fit.linear import evaluated, forms_of
+from beforehand.fit.rows import RowValues
+from beforehand.fit.tableau import Tableau
+
+# Changes of coefficients are wanted to so many bits below one of their standard errors.
+CHANGE_BITS = 56
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Influence:
+    """Influence measures of every row; each array has shape (n,).
+
+    Attributes
+    ----------
+    leverage : diagonal of the hat matrix
+    internal, external : studentized residuals, by the error of all rows and without the row
+    cooks_distance : Cook (1977), eq. 5
+    dffits : change of the row's own fitted value, in standard errors without the row
+    largest_dfbetas : largest change of a coefficient in standard errors without the row; None
+        where not asked for
+    covariance_ratio : determinant of the coefficients' covariance without the row over with it
+    sole : rows of leverage 1, without which a coefficient cannot be estimated; their other measures
+        are NaN, as they do not exist
+    """
+
+    leverage: FloatArray
+    internal: FloatArray
+    external: FloatArray
+    cooks_distance: FloatArray
+    dffits: FloatArray
+    largest_dfbetas: FloatArray | None
+    covariance_ratio: FloatArray
+    sole: NDArray[np.bool_]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class WithoutEach:
+    """The fit without each of some rows alone; m rows, k columns, b predictors.
+
+    Attributes
+    ----------
+    change_r_squared : FloatArray, shape (m,)
+        R² without the row less R² with it.
+    change_coefficient : FloatArray, shape (m,)
+        Largest absolute change of a coefficient but the intercept, in standard errors of the fit
+        with the row.
+    column : array of int, shape (m,)
+        Column of that coefficient; -1 for a model without any.
+    p : mapping of predictor to FloatArray, shape (m,)
+        p of each predictor without the row.
+    estimates : FloatArray, shape (m, k)
+        Coefficients without the row.
+    """
+
+    change_r_squared: FloatArray
+    change_coefficient: FloatArray
+    column: NDArray[np.int64]
+    p: Mapping[str, FloatArray]
+    estimates: FloatArray
+
+
+def influence(
+    source: Source, tableau: Tableau, values: RowValues, *, dfbetas: bool = False
+) -> Influence:
+    """Influence measures of every row.
+
+    Parameters
+    ----------
+    source : Source
+        The rows of the fit.
+    tableau : Tableau
+    values : RowValues
+    dfbetas : bool
+        Whether to compute DFBETAS, the one measure that needs every coefficient of every row.
+    """
+    n, p, df = tableau.n, tableau.p, tableau.df
+    h, e = values.leverage, values.residual
+    sole = h >= 1.0
+    s2 = float(tableau.rss) / df
+    with np.errstate(divide="ignore", invalid="ignore"):
+        rest = np.where(sole, np.nan, 1.0 - h)
+        internal = e / np.sqrt(s2 * rest)
+        without = (df * s2 - e * e / rest) / (df - 1) if df > 1 else np.full(len(h), np.nan)
+        without = np.where(without > 0.0, without, np.nan)
+        external = e / np.sqrt(without * rest)
+        cooks = internal * internal * h / (p * rest)
+        dffits = external * np.sqrt(h / rest)
+        ratio = (without / s2) ** p / rest
+    largest = _largest_dfbetas(source, tableau, values, without) if dfbetas else None
+    return Influence(
+        leverage=h, internal=internal, external=external, cooks_distance=cooks, dffits=dffits,
+        largest_dfbetas=largest, covariance_ratio=ratio, sole=sole,
+    )  # fmt: skip
+
+
+def _pulls(source: Source, tableau: Tableau) -> FloatArray:
+    """``(X'X)⁻¹ x`` of each row, over the root of its diagonal: shape (n_rows, k), slopes only."""
+    weights, constants = tableau.pulls()
+    forms = forms_of(
+        tableau.keys, tableau.tops(tableau.keys), weights, constants, lowest_bit=-CHANGE_BITS
+    )
+    out = np.empty((source.n_rows, len(tableau.keys)))
+    for start, stop, block in evaluated(source, forms):
+        out[start:stop] = block
+    return out
+
+
+def _largest_dfbetas(
+    source: Source, tableau: Tableau, values: RowValues, without: FloatArray
+) -> FloatArray:
+    """Largest |DFBETAS| of each row over the slopes; in blocks, so that no (n, k) array is made."""
+    weights, constants = tableau.pulls()
+    forms = forms_of(
+        tableau.keys, tableau.tops(tableau.keys), weights, constants, lowest_bit=-CHANGE_BITS
+    )
+    out = np.zeros(source.n_rows)
+    for start, stop, block in evaluated(source, forms):
+        with np.errstate(divide="ignore", invalid="ignore"):
+            scale = np.abs(values.residual[start:stop]) / (1.0 - values.leverage[start:stop])
+            out[start:stop] = np.abs(block).max(axis=1, initial=0.0) * scale / np.sqrt(without[start:stop])
+    return out
+
+
+def without_each(
+    chosen: Source,
+    tableau: Tableau,
+    *,
+    residual: FloatArray,
+    leverage: FloatArray,
+    outcome: FloatArray,
+    blocks: Mapping[str, tuple[Key, ...]],
+) -> WithoutEach:
+    """The fit without each of some rows, each left out alone.
+
+    Parameters
+    ----------
+    chosen : Source
+        The m rows in question only, none of leverage 1.
+    tableau : Tableau
+        Fit of all rows.
+    residual, leverage, outcome : FloatArray, shape (m,)
+        Of the same rows.
+    blocks : mapping of predictor to its columns
+    """
+    k, df = len(tableau.keys), tableau.df
+    rest = 1.0 - leverage
+    s2 = float(tableau.rss) / df
+    s2_without = np.maximum((df * s2 - residual * residual / rest) / (df - 1), 0.0)
+    pulls = _pulls(chosen, tableau)
+    root = np.array([float(value) for value in tableau.inverse_roots()])
+    # Leaving a row out moves the coefficients by (X'X)⁻¹ x e / (1 - h).
+    shift = pulls * (residual / rest)[:, None]
+    in_errors = np.abs(shift) / np.sqrt(s2)
+    estimates = np.array(tableau.estimates)[None, :] - shift * root[None, :]
+    column = in_errors.argmax(axis=1) if k else np.full(len(rest), -1)
+    largest = in_errors[np.arange(len(rest)), column] if k else np.zeros(len(rest))
+    return WithoutEach(
+        change_r_squared=_change_of_r_squared(tableau, residual, rest, outcome),
+        change_coefficient=largest,
+        column=np.asarray(column, dtype=np.int64),
+        p={
+            name: _p_without(tableau, keys, pulls, root, rest, estimates, s2_without)
+            for name, keys in blocks.items()
+        },
+        estimates=estimates,
+    )
+
+
+def _change_of_r_squared(
+    tableau: Tableau, residual: FloatArray, rest: FloatArray, outcome: FloatArray
+) -> FloatArray:
+    """R² without each row less R² with it."""
+    rss, tss, n = float(tableau.rss), float(tableau.tss), tableau.n
+    if tableau.intercept:
+        about = outcome - float(tableau.outcome_mean)
+        tss_without = tss - about * about * (n / (n - 1))
+    else:
+        tss_without = tss - outcome * outcome
+    lost = residual * residual / rest
+    with np.errstate(divide="ignore", invalid="ignore"):
+        return np.where(tss_without > 0.0, rss / tss - (rss - lost) / tss_without, 0.0)
+
+
+def _p_without(
+    tableau: Tableau,
+    keys: tuple[Key, ...],
+    pulls: FloatArray,
+    root: FloatArray,
+    rest: FloatArray,
+    estimates: FloatArray,
+    s2: FloatArray,
+) -> FloatArray:
+    """p of one predictor without each row: t for one column, partial F for a block."""
+    places = [tableau.keys.index(key) for key in keys]
+    df = tableau.df - 1
+    with np.errstate(divide="ignore", invalid="ignore"):
+        if len(places) == 1:
+            at = places[0]
+            variance = root[at] * root[at] * (1.0 + pulls[:, at] * pulls[:, at] / rest)
+            t = estimates[:, at] / np.sqrt(s2 * variance)
+            return np.asarray(2.0 * stdtr(df, -np.abs(t)))
+        block = pulls[:, places]
+        unit = tableau.unit_inverse_of(places)
+        inverse = unit[None, :, :] + block[:, :, None] * block[:, None, :] / rest[:, None, None]
+        scaled = estimates[:, places] / root[places]
+        gain = (scaled * np.linalg.solve(inverse, scaled[:, :, None])[:, :, 0]).sum(axis=1)
+        return np.asarray(fdtrc(len(places), df, gain / len(places) / s2))

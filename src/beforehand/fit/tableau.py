@@ -1,0 +1,498 @@
+"""Least squares from exact moments: a small tableau of fixed-point integers, swept (Goodnight 1979)."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+
+import numpy as np
+from scipy.special import fdtrc, stdtr
+
+from beforehand.faults import NumericalError
+from beforehand.fit.columns import FloatArray, Key
+from beforehand.fit.moments import Integers, Moments
+from beforehand.fit.results import Coefficient, Fit, TermTest
+
+# Fixed-point fraction: 77 decimal digits, of which a condition number of 1e10 costs twenty.
+BITS = 256
+ONE = 1 << BITS
+
+# A column whose part that is not explained by the ones before is smaller than this share of its own
+# length is an exact combination of them: rounding of doubles leaves about 1e-16, honest data more.
+DEPENDENCE_TOLERANCE = 1e-13
+
+# Residuals smaller than this share of the outcome's spread are rounding of the table.
+EXACT_FIT_TOLERANCE = 1e-13
+
+
+class RankDeficient(NumericalError):
+    """A column is an exact combination of the others."""
+
+    code = "rank_deficient"
+
+
+@dataclass(frozen=True, slots=True)
+class Dependence:
+    """A column that is an exact combination of earlier ones; None stands for the intercept."""
+
+    key: Key
+    weights: tuple[tuple[Key | None, float], ...]
+    relative_pivot: float
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Tableau:
+    """A model swept in: inverse, coefficients and residual sum of squares in fixed point.
+
+    The last row and column are the outcome's. Cross-products about the mean (or 0) are
+    ``matrix[i, j] * 2**(shifts[i] + shifts[j]) / n``, as fixed-point numbers of ``BITS`` bits.
+    """
+
+    moments: Moments
+    outcome: Key
+    keys: tuple[Key, ...]
+    intercept: bool
+    shifts: tuple[int, ...]
+    matrix: Integers
+    total: int
+
+    @property
+    def n(self) -> int:
+        """Rows."""
+        return self.moments.n
+
+    @property
+    def p(self) -> int:
+        """Coefficients with the intercept."""
+        return len(self.keys) + int(self.intercept)
+
+    @property
+    def df(self) -> int:
+        """Residual degrees of freedom."""
+        return self.n - self.p
+
+    @property
+    def rss(self) -> Fraction:
+        """Residual sum of squares."""
+        return self._squares(int(self.matrix[-1, -1]))
+
+    @property
+    def tss(self) -> Fraction:
+        """Total sum of squares, about the mean with an intercept."""
+        return self._squares(self.total)
+
+    def _squares(self, value: int) -> Fraction:
+        return _scaled(max(value, 0), 2 * self.shifts[-1]) / self.n
+
+    @property
+    def exact(self) -> bool:
+        """Whether the residuals are no more than rounding of the table."""
+        rss, total = max(int(self.matrix[-1, -1]), 0), self.total
+        tolerance = Fraction(EXACT_FIT_TOLERANCE) ** 2
+        return rss <= tolerance * total
+
+    def slope(self, place: int) -> Fraction:
+        """A coefficient."""
+        return _scaled(int(self.matrix[place, -1]), self.shifts[-1] - self.shifts[place])
+
+    @property
+    def estimates(self) -> tuple[float, ...]:
+        """Coefficients without the intercept, shape (len(keys),)."""
+        return tuple(float(self.slope(k)) for k in range(len(self.keys)))
+
+    @property
+    def constant(self) -> Fraction:
+        """The intercept; 0 without one."""
+        if not self.intercept:
+            return Fraction(0)
+        return self._mean(self.outcome) - sum(
+            (self.slope(k) * self._mean(key) for k, key in enumerate(self.keys)), Fraction(0)
+        )
+
+    def _mean(self, key: Key) -> Fraction:
+        place = self.moments.places[key]
+        return _power(Fraction(int(self.moments.sums[place]), self.n), self.moments.units[place])
+
+    def inverse(self) -> FloatArray:
+        """Inverse of the cross-products of all coefficients, the intercept first; shape (p, p)."""
+        k = len(self.keys)
+        scale = [math.ldexp(1.0, -s) if abs(s) < 1000 else 0.0 for s in self.shifts[:k]]
+        inner = np.array([[-float(int(v) >> (BITS - 106)) * 2.0**-106 for v in row] for row in self.matrix[:k, :k]])
+        inner = inner.reshape(k, k) * np.outer(scale, scale) * self.n
+        if not self.intercept:
+            return inner
+        out = np.empty((k + 1, k + 1))
+        out[1:, 1:] = inner
+        means = [self._mean(key) for key in self.keys]
+        exact_inner = [[-_scaled(int(self.matrix[i, j]), -self.shifts[i] - self.shifts[j]) * self.n for j in range(k)] for i in range(k)]
+        cross = [-sum((m * exact_inner[i][j] for i, m in enumerate(means)), Fraction(0)) for j in range(k)]
+        out[0, 1:] = out[1:, 0] = [float(c) for c in cross]
+        out[0, 0] = float(Fraction(1, self.n) - sum((c * m for c, m in zip(cross, means, strict=True)), Fraction(0)))
+        return out
+
+    @property
+    def outcome_mean(self) -> Fraction:
+        """Mean of the outcome."""
+        return self._mean(self.outcome)
+
+    def tops(self, keys: Sequence[Key]) -> list[int]:
+        """Exponents above columns."""
+        return [self.moments.tops[place] for place in self.moments.index(keys)]
+
+    def _inverse_entry(self, i: int, j: int) -> int:
+        """An entry of the inverse in fixed point, in the tableau's scale; it stands negated."""
+        return -int(self.matrix[i, j])
+
+    def inverse_roots(self) -> tuple[Fraction, ...]:
+        """Roots of the diagonal of the inverse cross-products, one for each slope."""
+        return tuple(self._root(k) for k in range(len(self.keys)))
+
+    def _root(self, k: int) -> Fraction:
+        value = _scaled(self._inverse_entry(k, k), -2 * self.shifts[k]) * self.n
+        return Fraction(_sqrt(value))
+
+    def unit_inverse_of(self, places: Sequence[int]) -> FloatArray:
+        """The inverse cross-products of some slopes scaled to a unit diagonal."""
+        out = np.empty((len(places), len(places)))
+        for i, one in enumerate(places):
+            for j, other in enumerate(places):
+                scale = math.isqrt(self._inverse_entry(one, one) * self._inverse_entry(other, other))
+                out[i, j] = float(Fraction(self._inverse_entry(one, other), scale))
+        return out
+
+    def pulls(self) -> tuple[list[list[Fraction]], list[Fraction]]:
+        """Weights and constants of the forms ``((X'X)⁻¹ x)_j / root_j``, one for each slope."""
+        k = len(self.keys)
+        roots = self.inverse_roots()
+        means = [self._mean(key) for key in self.keys] if self.intercept else [Fraction(0)] * k
+        weights = [
+            [
+                _scaled(self._inverse_entry(i, j), -self.shifts[i] - self.shifts[j]) * self.n / roots[j]
+                for j in range(k)
+            ]
+            for i in range(k)
+        ]
+        return weights, _centred(weights, means)
+
+    def whitening(self) -> tuple[list[list[Fraction]], list[Fraction]]:
+        """Weights and constants of forms that make the columns orthonormal.
+
+        The squares of the forms of a row add to its leverage, less ``1/n`` with an intercept.
+        """
+        k = len(self.keys)
+        lower = _cholesky([[self._inverse_entry(i, j) for j in range(k)] for i in range(k)])
+        half = math.isqrt(self.n << (2 * BITS))
+        weights = [
+            [_power(Fraction(lower[i][j] * half, 1 << (2 * BITS)), -self.shifts[i]) for j in range(k)]
+            for i in range(k)
+        ]
+        means = [self._mean(key) for key in self.keys] if self.intercept else [Fraction(0)] * k
+        return weights, _centred(weights, means)
+
+    def leverage_of(self, values: Sequence[Fraction]) -> Fraction:
+        """Leverage of a row with these values of the columns."""
+        k = len(self.keys)
+        about = [
+            value - (self._mean(key) if self.intercept else 0)
+            for value, key in zip(values, self.keys, strict=True)
+        ]
+        scaled = [_power(value, -self.shifts[j]) for j, value in enumerate(about)]
+        total = sum(
+            (scaled[i] * scaled[j] * self._inverse_entry(i, j) for i in range(k) for j in range(k)),
+            Fraction(0),
+        )
+        return total * self.n / ONE + (Fraction(1, self.n) if self.intercept else 0)
+
+    def without(self, keys: Sequence[Key]) -> Tableau:
+        """The model less some columns."""
+        matrix = self.matrix
+        gone = [self.keys.index(key) for key in keys]
+        for place in gone:
+            matrix = _swept(matrix, place, out=True)
+        stay = [k for k in range(len(self.keys) + 1) if k not in gone]
+        return Tableau(
+            self.moments, self.outcome, tuple(self.keys[k] for k in stay[:-1]), self.intercept,
+            tuple(self.shifts[k] for k in stay), matrix[np.ix_(stay, stay)], self.total,
+        )  # fmt: skip
+
+    def gain(self, keys: Sequence[Key]) -> int:
+        """What leaving columns out adds to the residual sum of squares, in units of the tableau."""
+        places = [*(self.keys.index(key) for key in keys), len(self.keys)]
+        inner = self.matrix[np.ix_(places, places)]
+        before = int(inner[-1, -1])
+        for place in range(len(keys)):
+            inner = _swept(inner, place, out=True)
+        return int(inner[-1, -1]) - before
+
+
+def _centred(weights: Sequence[Sequence[Fraction]], means: Sequence[Fraction]) -> list[Fraction]:
+    """Constants that put forms about the means."""
+    return [
+        -sum((row[form] * mean for row, mean in zip(weights, means, strict=True)), Fraction(0))
+        for form in range(len(means))
+    ]
+
+
+def _cholesky(matrix: list[list[int]]) -> list[list[int]]:
+    """Lower triangle L with L L' the matrix, all in fixed point."""
+    k = len(matrix)
+    lower = [[0] * k for _ in range(k)]
+    for j in range(k):
+        own = (matrix[j][j] << BITS) - sum(lower[j][m] ** 2 for m in range(j))
+        lower[j][j] = math.isqrt(max(own, 1))
+        for i in range(j + 1, k):
+            rest = (matrix[i][j] << BITS) - sum(lower[i][m] * lower[j][m] for m in range(j))
+            lower[i][j] = rest // lower[j][j]
+    return lower
+
+
+def _scaled(value: int, shift: int) -> Fraction:
+    """A fixed-point number times ``2**shift``."""
+    return _power(Fraction(value), shift - BITS)
+
+
+def _power(value: Fraction, shift: int) -> Fraction:
+    return value * (1 << shift) if shift >= 0 else value / (1 << -shift)
+
+
+def _swept(matrix: Integers, k: int, *, out: bool = False) -> Integers:
+    """Sweep column ``k`` in or out; the inverse stands negated (Goodnight 1979)."""
+    pivot = int(matrix[k, k])
+    column = matrix[:, k].copy()
+    row = (column * ONE) // pivot
+    swept = matrix - ((column[:, None] * row[None, :]) >> BITS)
+    line = -row if out else row
+    swept[k, :] = line
+    swept[:, k] = line
+    swept[k, k] = -((ONE << BITS) // pivot)
+    return swept
+
+
+def _start(moments: Moments, keys: Sequence[Key], intercept: bool) -> tuple[Integers, tuple[int, ...], list[int]]:
+    """The unswept matrix, its shifts, and the raw length of each column in the matrix's units."""
+    about = moments.about(keys, centred=intercept)
+    raw = moments.about(keys, centred=False)
+    half = [(int(about[i, i]).bit_length() + 1) // 2 for i in range(len(keys))]
+    up = np.array([1 << (2 * BITS - h) for h in half], object)
+    # (about << 4 BITS) >> (half_i + half_j) without a negative shift, then down to BITS.
+    matrix = ((about * up[:, None]) * up[None, :]) >> (3 * BITS)
+    shifts = tuple(h + moments.units[p] for h, p in zip(half, moments.index(keys), strict=True))
+    lengths = [(int(raw[i, i]) << BITS) >> (2 * half[i]) for i in range(len(keys))]
+    return matrix, shifts, lengths
+
+
+def _vanishes(pivot: int, length: int) -> bool:
+    return pivot <= 0 or Fraction(pivot) <= Fraction(DEPENDENCE_TOLERANCE) ** 2 * length
+
+
+def dependence(moments: Moments, keys: Sequence[Key], *, intercept: bool) -> Dependence | None:
+    """The first column that is an exact combination of the ones before it, or None."""
+    if not keys:
+        return None
+    matrix, shifts, lengths = _start(moments, keys, intercept)
+    for k, key in enumerate(keys):
+        pivot = int(matrix[k, k])
+        if _vanishes(pivot, lengths[k]):
+            weights: list[tuple[Key | None, float]] = []
+            slopes = [_scaled(int(matrix[i, k]), shifts[k] - shifts[i]) for i in range(k)]
+            means = [_power(Fraction(int(moments.sums[p]), moments.n), moments.units[p]) for p in moments.index(keys[: k + 1])]
+            spread = max([abs(float(m)) for m in means] + [1e-300])
+            for i in range(k):
+                rounded = float(f"{float(slopes[i]):.10g}")
+                if abs(slopes[i]) * _power(Fraction(1), shifts[i] - shifts[k]) > Fraction(1, 10**11):
+                    weights.append((keys[i], rounded))
+            if intercept:
+                constant = float(means[k] - sum((s * m for s, m in zip(slopes, means, strict=False)), Fraction(0)))
+                if abs(constant) > 1e-11 * spread or not weights:
+                    weights.append((None, float(f"{constant:.10g}")))
+            relative = math.sqrt(max(pivot, 0) / lengths[k]) if lengths[k] else 0.0
+            return Dependence(key, tuple(weights), relative)
+        matrix = _swept(matrix, k)
+    return None
+
+
+def tableau_of(moments: Moments, outcome: Key, keys: Sequence[Key], *, intercept: bool) -> Tableau:
+    """Sweep a model in.
+
+    Raises
+    ------
+    RankDeficient
+        When a column is an exact combination of the ones before it.
+    """
+    everything = (*keys, outcome)
+    matrix, shifts, lengths = _start(moments, everything, intercept)
+    total = int(matrix[-1, -1])
+    for k in range(len(keys)):
+        if _vanishes(int(matrix[k, k]), lengths[k]):
+            raise RankDeficient(f"column {k + 1} of the model is an exact combination of the others")
+        matrix = _swept(matrix, k)
+    return Tableau(moments, outcome, tuple(keys), intercept, shifts, matrix, total)
+
+
+def _sqrt(value: Fraction) -> float:
+    """Square root, to double precision."""
+    if value <= 0:
+        return 0.0
+    shift = 2 * BITS + max(0, value.denominator.bit_length() - value.numerator.bit_length())
+    shift += shift % 2
+    return float(Fraction(math.isqrt((value.numerator << shift) // value.denominator), 1 << (shift // 2)))
+
+
+def fit_of(tableau: Tableau, blocks: Mapping[str, tuple[Key, ...]]) -> Fit:
+    """The classical fit of a swept model, with a test for each block of columns."""
+    n, p, df = tableau.n, tableau.p, tableau.df
+    rss, tss = tableau.rss, tableau.tss
+    exact = tableau.exact
+    s2 = Fraction(0) if exact or df <= 0 else rss / df
+    inverse = tableau.inverse()
+    coefficients: list[Coefficient] = []
+    if tableau.intercept:
+        se = math.sqrt(max(float(s2) * inverse[0, 0], 0.0))
+        coefficients.append(_coefficient(None, float(tableau.constant), se, df, exact))
+    residual = max(int(tableau.matrix[-1, -1]), 0)
+    for k, key in enumerate(tableau.keys):
+        variance = Fraction(0) if exact else _scaled(residual, 0) * -_scaled(int(tableau.matrix[k, k]), 2 * (tableau.shifts[-1] - tableau.shifts[k])) / df
+        coefficients.append(_coefficient(key, float(tableau.slope(k)), _sqrt(variance), df, exact))
+    tests = {name: _test(name, keys, tableau, coefficients, exact) for name, keys in blocks.items()}
+    r2 = float(1 - rss / tss) if tss else 0.0
+    if exact:
+        r2 = 1.0
+    model_df = len(tableau.keys)
+    f = None if exact or not model_df or rss == 0 else float(((tss - rss) / model_df) / (rss / df))
+    total_df = n - int(tableau.intercept)
+    log_likelihood_part = None if exact else n * math.log(2 * math.pi * float(rss / n)) + n
+    return Fit(
+        n=n, p=p, df_residual=df, df_inference=df, coefficients=tuple(coefficients), tests=tests,
+        rss=0.0 if exact else float(rss), tss=float(tss), r_squared=r2,
+        adjusted_r_squared=1.0 if exact else float(1 - (rss / df) / (tss / total_df)),
+        residual_sd=_sqrt(s2), f=f, f_df=(model_df, df),
+        f_p=None if f is None else float(fdtrc(model_df, df, f)),
+        aic=None if log_likelihood_part is None else log_likelihood_part + 2 * p,
+        bic=None if log_likelihood_part is None else log_likelihood_part + p * math.log(n),
+        covariance=float(s2) * inverse, exact=exact,
+    )  # fmt: skip
+
+
+def _coefficient(key: Key | None, estimate: float, se: float, df: int, exact: bool) -> Coefficient:
+    if exact or se == 0.0:
+        return Coefficient(key=key, estimate=estimate, standard_error=se, t=None, p=None)
+    t = estimate / se
+    return Coefficient(key=key, estimate=estimate, standard_error=se, t=t, p=2.0 * float(stdtr(df, -abs(t))))
+
+
+def _test(name: str, keys: tuple[Key, ...], tableau: Tableau, coefficients: list[Coefficient], exact: bool) -> TermTest:
+    gain, rss = tableau.gain(keys), max(int(tableau.matrix[-1, -1]), 0)
+    f2 = None if exact or rss == 0 else float(Fraction(gain, rss))
+    if len(keys) == 1:
+        own = next(c for c in coefficients if c.key == keys[0])
+        return TermTest(predictor=name, df=1, statistic=None if own.t is None else abs(own.t), p=own.p, partial_f2=f2)
+    f = None if f2 is None else f2 * tableau.df / len(keys)
+    p = None if f is None else float(fdtrc(len(keys), tableau.df, f))
+    return TermTest(predictor=name, df=len(keys), statistic=f, p=p, partial_f2=f2)
+
+
+def added_column_test(
+    tableau: Tableau, key: Key, moments: Moments | None = None
+) -> tuple[float, float, int] | None:
+    """t, two-sided p and degrees of freedom of one column added to a model, in O(p²).
+
+    Parameters
+    ----------
+    tableau : Tableau
+    key : Key
+        The added column.
+    moments : Moments, optional
+        Moments of the same rows that hold ``key`` too; the tableau's own by default.
+
+    Returns
+    -------
+    tuple or None
+        None when the column is a combination of those in the model, or no residual is left.
+    """
+    moments = tableau.moments if moments is None else moments
+    df = tableau.df - 1
+    keys = (*tableau.keys, tableau.outcome, key)
+    places = moments.index(keys)
+    line = moments.n * moments.products[places[-1], places]
+    if tableau.intercept:
+        line = line - int(moments.sums[places[-1]]) * moments.sums[places]
+    own = int(line[-1])
+    half = (own.bit_length() + 1) // 2
+    shift = half + moments.units[places[-1]]
+    # Into the tableau's scale: about * 2^(u_i + u_z) = value * 2^(shift_i + shift_z - BITS).
+    scaled = [
+        _fixed(int(v), moments.units[p] + moments.units[places[-1]] - s - shift)
+        for v, p, s in zip(line[:-1], places[:-1], tableau.shifts, strict=True)
+    ]
+    k = len(tableau.keys)
+    # The inverse stands negated in the tableau.
+    weighed = [sum(int(a) * b for a, b in zip(row, scaled[:-1], strict=True)) >> BITS for row in tableau.matrix[:k, :k]]
+    own_fixed = _fixed(own, 2 * (moments.units[places[-1]] - shift))
+    pivot = own_fixed + (sum(a * b for a, b in zip(weighed, scaled[:-1], strict=True)) >> BITS)
+    raw = moments.n * int(moments.products[places[-1], places[-1]])
+    if df < 1 or tableau.exact or _vanishes(pivot, _fixed(raw, 2 * (moments.units[places[-1]] - shift))):
+        return None
+    slopes = [int(v) for v in tableau.matrix[:k, -1]]
+    joint = scaled[-1] - (sum(a * b for a, b in zip(slopes, scaled[:-1], strict=True)) >> BITS)
+    gain = Fraction(joint * joint, pivot * ONE)
+    rest = Fraction(int(tableau.matrix[-1, -1]), ONE) - gain
+    if rest <= Fraction(EXACT_FIT_TOLERANCE) ** 2 * Fraction(tableau.total, ONE):
+        return None
+    t = math.copysign(_sqrt(gain / (rest / df)), joint)
+    return t, 2.0 * float(stdtr(df, -abs(t))), df
+
+
+def _fixed(value: int, shift: int) -> int:
+    """``value * 2**shift`` in fixed point."""
+    up = BITS + shift
+    return value << up if up >= 0 else value >> -up
+
+
+def unit_inverse(moments: Moments, keys: Sequence[Key], *, centred: bool) -> FloatArray:
+    """Inverse of the cross-products scaled to a unit diagonal, shape (k, k)."""
+    matrix, shifts, lengths = _start(moments, keys, centred)
+    diagonal = [int(matrix[k, k]) for k in range(len(keys))]
+    for k in range(len(keys)):
+        if _vanishes(int(matrix[k, k]), lengths[k]):
+            raise RankDeficient(f"column {k + 1} is an exact combination of the others")
+        matrix = _swept(matrix, k)
+    del shifts
+    out = np.empty((len(keys), len(keys)))
+    for i in range(len(keys)):
+        for j in range(i + 1):
+            scale = math.isqrt(diagonal[i] * diagonal[j])
+            out[i, j] = out[j, i] = float(Fraction(-int(matrix[i, j]) * scale, 1 << (2 * BITS)))
+    return out
+
+
+def triangle_of(moments: Moments, keys: Sequence[Key], *, intercept: bool) -> FloatArray:
+    """Upper triangle R with R'R the cross-products of all columns scaled to unit length.
+
+    The intercept, where there is one, is the first column; nothing is centred.
+    """
+    size = len(keys) + int(intercept)
+    places = moments.index(keys)
+    gram = np.zeros((size, size), object)
+    first = int(intercept)
+    gram[first:, first:] = moments.products[np.ix_(places, places)]
+    if intercept:
+        gram[0, 0] = moments.n
+        gram[0, 1:] = gram[1:, 0] = moments.sums[places]
+    half = [(int(gram[i, i]).bit_length() + 1) // 2 for i in range(size)]
+    up = np.array([1 << (2 * BITS - h) if h <= 2 * BITS else 0 for h in half], object)
+    matrix = ((gram * up[:, None]) * up[None, :]) >> (3 * BITS)
+    lengths = [int(matrix[k, k]) for k in range(size)]
+    out = np.zeros((size, size))
+    for k in range(size):
+        pivot = int(matrix[k, k])
+        if pivot <= 0:
+            raise RankDeficient(f"column {k + 1} is an exact combination of the others")
+        row = matrix[k, k:]
+        for j in range(k, size):
+            value = Fraction(int(row[j - k]) ** 2, pivot * lengths[j])
+            out[k, j] = math.copysign(_sqrt(value), int(row[j - k]))
+        rest = matrix[k + 1 :, k + 1 :] - ((matrix[k + 1 :, k][:, None] * row[1:][None, :]) // pivot)
+        matrix[k + 1 :, k + 1 :] = rest
+    return out
