@@ -221,7 +221,7 @@ SENTENCES: Mapping[str, Sentence] = {
         f"{plural(r.evidence['cells'], 'missing cell')} of {r.subject} "
         f"{'is' if r.evidence['cells'] == 1 else 'are'} filled"
         + (
-            f" with {number(r.evidence['value'], 6)} ({str(r.evidence['method']).replace('_', ' ')})."
+            f" with {limit_text(r.evidence['value']) if not isinstance(r.evidence['value'], str) else r.evidence['value']} ({str(r.evidence['method']).replace('_', ' ')})."
             if r.evidence["value"] is not None
             else " by regression on the other complete predictors."
         )

@@ -73,6 +73,36 @@ def inflation_of(
     return found
 
 
+def inflation_without(
+    moments: Moments, blocks: Mapping[str, tuple[Key, ...]], name: str, *, intercept: bool
+) -> dict[str, float]:
+    """Variance inflation of one predictor after each other predictor in turn has been left out.
+
+    Computed from one inverse: leaving columns out of the model takes their part out of the inverse.
+    """
+    keys = [key for block in blocks.values() for key in block]
+    inverse = unit_inverse(moments, keys, centred=intercept)
+    unit = moments.cross(keys, centred=intercept)
+    own = [keys.index(key) for key in blocks[name]]
+    found: dict[str, float] = {}
+    for other, block in blocks.items():
+        if other == name:
+            continue
+        gone = [keys.index(key) for key in block]
+        left = _left_out(inverse, own, gone)
+        generalized = _determinant(left) * _determinant(unit[np.ix_(own, own)])
+        found[other] = float(left[0, 0]) if len(own) == 1 else float(generalized ** (1.0 / len(own)))
+    return found
+
+
+def _left_out(inverse: FloatArray, own: list[int], gone: list[int]) -> FloatArray:
+    """The part ``own`` of an inverse after the columns ``gone`` have left, by elimination."""
+    rest = inverse[np.ix_(gone + own, gone + own)].copy()
+    for k in range(len(gone)):
+        rest[k + 1 :] = rest[k + 1 :] - (rest[k + 1 :, k] / rest[k, k])[:, None] * rest[k]
+    return rest[len(gone) :, len(gone) :]
+
+
 def condition(moments: Moments, keys: Sequence[Key], *, intercept: bool) -> Condition:
     """Condition indices and variance shares (Belsley, Kuh & Welsch 1980, ch. 3).
 

@@ -86,6 +86,15 @@ class Moments:
             products = products - row[:, None] * row[None, :]
         return Moments(self.keys, self.n - len(rows), self.units, self.tops, sums, products, self.places)
 
+    def restricted(self, keys: Sequence[Key]) -> Moments:
+        """The moments of some of the columns."""
+        keys = tuple(dict.fromkeys(keys))
+        places = self.index(keys)
+        return Moments(
+            keys, self.n, tuple(self.units[p] for p in places), tuple(self.tops[p] for p in places),
+            self.sums[places], self.products[np.ix_(places, places)], {key: k for k, key in enumerate(keys)},
+        )  # fmt: skip
+
     def index(self, keys: Sequence[Key]) -> list[int]:
         """Places of columns."""
         return [self.places[key] for key in keys]
@@ -111,6 +120,20 @@ class Moments:
         if scale == 0:
             return 0.0
         return (int(about[0, 1]) << (2 * FRACTION_BITS)) // scale / (1 << FRACTION_BITS)
+
+    def constant(self, key: Key) -> bool:
+        """Whether a column has one value only."""
+        k = self.places[key]
+        return self.n * int(self.products[k, k]) == int(self.sums[k]) ** 2
+
+    def raw(self, left: Sequence[Key], right: Sequence[Key]) -> FloatArray:
+        """Cross-products about 0 of two sets of columns, each correctly rounded."""
+        out = np.empty((len(left), len(right)))
+        for i, p in enumerate(self.index(left)):
+            for j, q in enumerate(self.index(right)):
+                value = Fraction(int(self.products[p, q])) * Fraction(2) ** (self.units[p] + self.units[q])
+                out[i, j] = float(value)
+        return out
 
     def about(self, keys: Sequence[Key], *, centred: bool) -> Integers:
         """Cross-products times n, about the means or about 0, in the columns' units."""

@@ -8,7 +8,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 
-from beforehand.fit.columns import FloatArray, Key
+from beforehand.fit.columns import Key
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -66,10 +66,6 @@ class Fit:
     aic, bic : float or None
         Gaussian likelihood, ``n log(2 pi rss / n) + n + 2 p`` and with ``p log n`` (the error
         variance is not counted as a parameter, as in statsmodels); None for an exact fit.
-    press, predicted_r_squared : float or None
-        Leave-one-out; None where not asked for or where a leverage is 1.
-    covariance : FloatArray
-        Shape (p, p), of the coefficients, by ``errors``.
     exact : bool
         The residuals vanish to the precision of the table: no t, p or F exists.
     df_inference : int
@@ -94,9 +90,6 @@ class Fit:
     f_p: float | None
     aic: float | None
     bic: float | None
-    press: float | None = None
-    predicted_r_squared: float | None = None
-    covariance: FloatArray
     exact: bool = False
     errors: str = "classical"
 

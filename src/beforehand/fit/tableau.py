@@ -107,30 +107,13 @@ class Tableau:
         """The intercept; 0 without one."""
         if not self.intercept:
             return Fraction(0)
-        return self._mean(self.outcome) - sum(
-            (self.slope(k) * self._mean(key) for k, key in enumerate(self.keys)), Fraction(0)
-        )
+        slopes = self.matrix[: len(self.keys), -1].tolist()
+        carried = sum(slope * mean for slope, mean in zip(slopes, self._scaled_means(), strict=True))
+        return self._mean(self.outcome) - _power(Fraction(carried, ONE * ONE), self.shifts[-1])
 
     def _mean(self, key: Key) -> Fraction:
         place = self.moments.places[key]
         return _power(Fraction(int(self.moments.sums[place]), self.n), self.moments.units[place])
-
-    def inverse(self) -> FloatArray:
-        """Inverse of the cross-products of all coefficients, the intercept first; shape (p, p)."""
-        k = len(self.keys)
-        scale = [math.ldexp(1.0, -s) if abs(s) < 1000 else 0.0 for s in self.shifts[:k]]
-        inner = np.array([[-float(int(v) >> (BITS - 106)) * 2.0**-106 for v in row] for row in self.matrix[:k, :k]])
-        inner = inner.reshape(k, k) * np.outer(scale, scale) * self.n
-        if not self.intercept:
-            return inner
-        out = np.empty((k + 1, k + 1))
-        out[1:, 1:] = inner
-        means = [self._mean(key) for key in self.keys]
-        exact_inner = [[-_scaled(int(self.matrix[i, j]), -self.shifts[i] - self.shifts[j]) * self.n for j in range(k)] for i in range(k)]
-        cross = [-sum((m * exact_inner[i][j] for i, m in enumerate(means)), Fraction(0)) for j in range(k)]
-        out[0, 1:] = out[1:, 0] = [float(c) for c in cross]
-        out[0, 0] = float(Fraction(1, self.n) - sum((c * m for c, m in zip(cross, means, strict=True)), Fraction(0)))
-        return out
 
     @property
     def outcome_mean(self) -> Fraction:
@@ -162,19 +145,46 @@ class Tableau:
                 out[i, j] = float(Fraction(self._inverse_entry(one, other), scale))
         return out
 
-    def pulls(self) -> tuple[list[list[Fraction]], list[Fraction]]:
-        """Weights and constants of the forms ``((X'X)⁻¹ x)_j / root_j``, one for each slope."""
+    def pulls(self, *, with_constant: bool = False) -> tuple[list[list[Fraction]], list[Fraction]]:
+        """Weights and constants of the forms ``((X'X)⁻¹ x)_j / root_j``, one for each slope.
+
+        With ``with_constant`` the form of the intercept comes first.
+        """
         k = len(self.keys)
         roots = self.inverse_roots()
         means = [self._mean(key) for key in self.keys] if self.intercept else [Fraction(0)] * k
-        weights = [
-            [
-                _scaled(self._inverse_entry(i, j), -self.shifts[i] - self.shifts[j]) * self.n / roots[j]
-                for j in range(k)
-            ]
+        inverse = [
+            [_scaled(self._inverse_entry(i, j), -self.shifts[i] - self.shifts[j]) * self.n for j in range(k)]
             for i in range(k)
         ]
-        return weights, _centred(weights, means)
+        weights = [[inverse[i][j] / roots[j] for j in range(k)] for i in range(k)]
+        constants = _centred(weights, means)
+        if with_constant:
+            root = self.constant_root()
+            first = [
+                -sum((mean * inverse[i][j] for j, mean in enumerate(means)), Fraction(0)) / root
+                for i in range(k)
+            ]
+            weights = [[one, *row] for one, row in zip(first, weights, strict=True)]
+            about = -sum((w * mean for w, mean in zip(first, means, strict=True)), Fraction(0))
+            constants = [Fraction(1, self.n) / root + about, *constants]
+        return weights, constants
+
+    def _scaled_means(self) -> list[int]:
+        """Means of the columns in fixed point, in the tableau's scale."""
+        return [
+            _fixed_of(self._mean(key), -shift) for key, shift in zip(self.keys, self.shifts, strict=False)
+        ]
+
+    def constant_root(self) -> Fraction:
+        """Root of the intercept's entry in the inverse cross-products."""
+        k = len(self.keys)
+        means = self._scaled_means()
+        spread = 0
+        if k:
+            line = np.array(means, object)
+            spread = -int((line * ((self.matrix[:k, :k] * line[None, :]).sum(axis=1) >> BITS)).sum() >> BITS)
+        return Fraction(_sqrt(Fraction(spread * self.n + ONE // self.n, ONE)))
 
     def whitening(self) -> tuple[list[list[Fraction]], list[Fraction]]:
         """Weights and constants of forms that make the columns orthonormal.
@@ -253,6 +263,14 @@ def _scaled(value: int, shift: int) -> Fraction:
     return _power(Fraction(value), shift - BITS)
 
 
+def _fixed_of(value: Fraction, shift: int) -> int:
+    """``value * 2**shift`` in fixed point."""
+    up = BITS + shift
+    if up >= 0:
+        return (value.numerator << up) // value.denominator
+    return value.numerator // (value.denominator << -up)
+
+
 def _power(value: Fraction, shift: int) -> Fraction:
     return value * (1 << shift) if shift >= 0 else value / (1 << -shift)
 
@@ -313,6 +331,19 @@ def dependence(moments: Moments, keys: Sequence[Key], *, intercept: bool) -> Dep
     return None
 
 
+def independent_of(moments: Moments, keys: Sequence[Key], *, intercept: bool) -> tuple[Key, ...]:
+    """The columns that are no exact combination of the ones before them, in order."""
+    if not keys:
+        return ()
+    matrix, _, lengths = _start(moments, keys, intercept)
+    kept: list[Key] = []
+    for k, key in enumerate(keys):
+        if not _vanishes(int(matrix[k, k]), lengths[k]):
+            matrix = _swept(matrix, k)
+            kept.append(key)
+    return tuple(kept)
+
+
 def tableau_of(moments: Moments, outcome: Key, keys: Sequence[Key], *, intercept: bool) -> Tableau:
     """Sweep a model in.
 
@@ -346,10 +377,9 @@ def fit_of(tableau: Tableau, blocks: Mapping[str, tuple[Key, ...]]) -> Fit:
     rss, tss = tableau.rss, tableau.tss
     exact = tableau.exact
     s2 = Fraction(0) if exact or df <= 0 else rss / df
-    inverse = tableau.inverse()
     coefficients: list[Coefficient] = []
     if tableau.intercept:
-        se = math.sqrt(max(float(s2) * inverse[0, 0], 0.0))
+        se = _sqrt(s2) * float(tableau.constant_root())
         coefficients.append(_coefficient(None, float(tableau.constant), se, df, exact))
     residual = max(int(tableau.matrix[-1, -1]), 0)
     for k, key in enumerate(tableau.keys):
@@ -371,7 +401,7 @@ def fit_of(tableau: Tableau, blocks: Mapping[str, tuple[Key, ...]]) -> Fit:
         f_p=None if f is None else float(fdtrc(model_df, df, f)),
         aic=None if log_likelihood_part is None else log_likelihood_part + 2 * p,
         bic=None if log_likelihood_part is None else log_likelihood_part + p * math.log(n),
-        covariance=float(s2) * inverse, exact=exact,
+        exact=exact,
     )  # fmt: skip
 
 

@@ -6,7 +6,7 @@ fit and check under a number for the lock; a quick one keeps none and numbers no
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Protocol
 
@@ -160,6 +160,10 @@ class Bench(Protocol):
 
     def inflation(self, model: Model) -> Sequence[tuple[str, float]]:
         """VIF of each predictor; for a block the generalized VIF to the power 1/df."""
+        ...
+
+    def inflation_without(self, model: Model, name: str) -> Mapping[str, float]:
+        """The same for one predictor, after each other predictor in turn has been left out."""
         ...
 
     def measures(self, fitted: Fitted, *, dfbetas: bool) -> Measures:

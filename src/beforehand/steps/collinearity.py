@@ -107,10 +107,9 @@ def _partner(
 ) -> str | None:
     """The predictor whose removal lowers the VIF of ``name`` most."""
     best: tuple[float, int, str] | None = None
-    for other in model.names:
-        if other == name or _related(name, other, keeping):
+    for other, left in bench.inflation_without(model, name).items():
+        if _related(name, other, keeping):
             continue
-        left = dict(bench.inflation(model.without(other)))[name]
         candidate = (rounded(left), order[other], other)
         if left < vif and (best is None or candidate < best):
             best = candidate

@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from beforehand.fit import assumptions, exponents, influence, ladder, robust
 from beforehand.fit.columns import FloatArray, Key
-from beforehand.fit.conditioning import Condition, condition, inflation_of
+from beforehand.fit.conditioning import Condition, condition, inflation_of, inflation_without
 from beforehand.fit.sums import exact_sum
 from beforehand.fit.elementary import log
 from beforehand.fit.moments import Moments, moments_of
@@ -209,7 +209,7 @@ class RecordingBench:
         judge = assumptions.white if test == "white" else assumptions.breusch_pagan
         return self._check(
             test, fitted, name, alpha,
-            lambda: judge(self._source(model.rows), keys, self.values(model), exact=fitted.fit.exact),
+            lambda: judge(self._source(model.rows), self.tableau(model), keys, self.values(model).residual),
         )  # fmt: skip
 
     def normality(self, fitted: Fitted, test: str, alpha: float) -> Checked:
@@ -234,9 +234,8 @@ class RecordingBench:
             if test == "durbin_watson":
                 return assumptions.durbin_watson(residual, order, exact=fitted.fit.exact)
             return assumptions.breusch_godfrey(
-                self._source(model.rows), model.keys, self.values(model), order,
-                lags=lags, intercept=model.intercept, exact=fitted.fit.exact,
-            )  # fmt: skip
+                self._source(model.rows), self.tableau(model), residual, order, lags
+            )
 
         return self._check(test, fitted, None, alpha, make)
 
@@ -245,7 +244,9 @@ class RecordingBench:
         model = fitted.model
         return self._check(
             "reset", fitted, None, alpha,
-            lambda: assumptions.reset(self._source(model.rows), self.tableau(model), self.values(model)),
+            lambda: assumptions.reset(
+                self._source(model.rows), self.tableau(model), self.values(model).fitted
+            ),
         )  # fmt: skip
 
     def dependence(self, model: Model) -> Linked | None:
@@ -283,6 +284,11 @@ class RecordingBench:
             found = inflation_of(moments, blocks_of(model), intercept=model.intercept)
             known = self._inflation[model] = tuple((name, found[name]) for name in model.names)
         return known
+
+    def inflation_without(self, model: Model, name: str) -> Mapping[str, float]:
+        """VIF of one predictor after each other predictor in turn has been left out."""
+        moments = self._with(model.rows, model.keys)
+        return inflation_without(moments, blocks_of(model), name, intercept=model.intercept)
 
     def measures(self, fitted: Fitted, *, dfbetas: bool) -> Measures:
         """Influence measures of every row in use."""
