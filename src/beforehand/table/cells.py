@@ -73,7 +73,7 @@ def content_of(path: Path, name: str) -> bytes:
     for signature, what in _SIGNATURES:
         if content.startswith(signature):
             raise DataError([fault(name, None, "", f"is {what}", "not_text")])
-    if not content.strip():
+    if not content or content.isspace():
         raise DataError([fault(name, None, "", "is empty", "empty")])
     return content
 

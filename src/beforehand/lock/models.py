@@ -1,0 +1,99 @@
+"""The lock: the whole record of one run, as it stands in a ``NAME.lock.yaml``.
+
+The order of fields is the order in the file. What a run did not come to is null or an empty
+list, never left out, so that two locks can be read side by side.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Annotated, Literal
+
+from pydantic import Field
+
+from beforehand.lock.answer import Answer
+from beforehand.lock.checks import Checks
+from beforehand.lock.record import Count, Digest, Name, PlainData, Record
+from beforehand.lock.trail import FitRecord, LedgerStage, PredictorFate, RowRemoved, RulingRecord
+
+LOCK_VERSION = 1
+
+Status = Literal["adopted", "mean_only", "inconclusive", "stopped"]
+
+
+class PlanRecord(Record):
+    """The plan that was run, whole."""
+
+    file: str = Field(description="Name of the plan's file.")
+    title: str = Field(description="Its title.")
+    question: str = Field(description="Its question.")
+    decisions: Digest = Field(description="Digest of all in it that can change a result.")
+    whole: Digest = Field(description="Digest of every word in it.")
+    written: PlainData = Field(description="The plan with all defaults written out.")
+
+
+class SealRecord(Record):
+    """Whether the plan was sealed before the run, and what changed since."""
+
+    state: Literal["sealed", "unsealed", "amended", "deviates"] = Field(description="State of the seal.")
+    changes: tuple[str, ...] = Field(description="Changes since the seal, one sentence each.")
+
+
+class DataRecord(Record):
+    """The table that was read."""
+
+    file: str = Field(description="File as the plan names it.")
+    fingerprint: Digest = Field(description="Digest of the columns in use, as typed, in canonical order.")
+    rows: Count = Field(description="Rows read.")
+    labelled: bool = Field(description="Whether rows have labels of their own.")
+    labels: Literal["shown", "hashed"] = Field(description="How labels stand in this lock.")
+
+
+class Alternative(Record):
+    """The same run with the changes that the plan declares, and whether the answer holds."""
+
+    changes: PlainData = Field(description="What the plan changes.")
+    status: Status = Field(description="How the run ended.")
+    answer: Answer | None = Field(description="What it came to; null when it stopped before any fit.")
+    ledger: tuple[LedgerStage, ...] = Field(description="Rows at each stage.")
+    rows_removed: tuple[RowRemoved, ...] = Field(description="Rows that left.")
+    predictors: Mapping[Name, PredictorFate] = Field(description="How each predictor ended.")
+    rulings: tuple[RulingRecord, ...] = Field(description="Every ruling, in order.")
+    fits: tuple[FitRecord, ...] = Field(description="Every fit, in the order first asked for.")
+    checks: Checks = Field(description="Everything looked at beside the fits.")
+    holds: bool = Field(description="Whether the answer holds by the plan's own tolerances.")
+    differences: tuple[str, ...] = Field(description="What differs from the main answer, one sentence each.")
+
+
+class Environment(Record):
+    """What the run was made with; outside the digest."""
+
+    beforehand: str = Field(description="Version of this program.")
+    python: str = Field(description="Version of Python.")
+    numpy: str = Field(description="Version of numpy.")
+    scipy: str = Field(description="Version of scipy.")
+
+
+class Lock(Record):
+    """The whole record of one run.
+
+    A lock made in memory carries the digest ``""``; writing fills it in.
+    """
+
+    lock: Literal[1] = Field(description="Version of the lock's language.")
+    plan: PlanRecord = Field(description="The plan that was run.")
+    seal: SealRecord = Field(description="State of its seal.")
+    data: DataRecord = Field(description="The table that was read.")
+    status: Status = Field(description="How the run ended.")
+    answer: Answer | None = Field(description="What it came to; null when it stopped before any fit.")
+    ledger: tuple[LedgerStage, ...] = Field(description="Rows at each stage.")
+    rows_removed: tuple[RowRemoved, ...] = Field(description="Rows that left.")
+    predictors: Mapping[Name, PredictorFate] = Field(description="How each predictor ended, in plan order.")
+    rulings: tuple[RulingRecord, ...] = Field(description="Every ruling, in order.")
+    fits: tuple[FitRecord, ...] = Field(description="Every fit, in the order first asked for.")
+    checks: Checks = Field(description="Everything looked at beside the fits.")
+    alternatives: Mapping[Name, Alternative] = Field(description="Declared alternatives, each a whole run.")
+    environment: Environment = Field(description="What the run was made with; outside the digest.")
+    digest: Annotated[str, Field(pattern=r"^(sha256:[0-9a-f]{64})?$")] = Field(
+        default="", description="Digest of all lines above the environment."
+    )

@@ -1,0 +1,268 @@
+"""From a lock to its text: one fact a line where a reviewer would look for one.
+
+What is read in a review stands in block style; what is a row of a table (a term, a correlation, a
+flagged row) is one flow line. Nothing wraps, and no choice of layout hangs on a computed number, so
+that a line of a difference is a difference of the record.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import os
+from collections.abc import Callable, Iterator, Mapping
+from functools import cache
+from operator import attrgetter
+from typing import Any
+
+from beforehand.lock.answer import Answer, Fragility
+from beforehand.lock.checks import Checks
+from beforehand.lock.files import write_whole
+from beforehand.lock.models import Alternative, DataRecord, Environment, Lock, PlanRecord, SealRecord
+from beforehand.lock.numbers import as_recorded, exact_text, number_text
+from beforehand.lock.record import Plain, Record
+from beforehand.lock.strings import string_text
+from beforehand.lock.trail import FitRecord, PredictorFate, RulingRecord
+
+HEADER = "# Written by beforehand. Do not edit: the digest at the end covers every line.\n"
+
+# Where the digest stops: what a run was made with may differ while the record is the same.
+DIGEST_ENDS_AT = "environment:"
+
+_COVERED = tuple(name for name in Lock.model_fields if name not in {"environment", "digest"})
+
+# Records of which every field has a line of its own; any other is one flow line.
+_IN_BLOCKS: frozenset[type] = frozenset(
+    {Alternative, Answer, Checks, DataRecord, Environment, FitRecord, Fragility, Lock, PlanRecord}
+    | {PredictorFate, RulingRecord, SealRecord}
+)
+
+# Lists of sentences, one a line; other lists of text hold numbers of fits, rulings and checks.
+_SENTENCES = frozenset({"cautions", "changes", "differences"})
+
+# Mappings that hold what a person wrote, not what a run computed.
+_WRITTEN_BY_HAND = frozenset({"written", "changes"})
+
+# Parts of the plan that fit into so many characters stay on one line. A plan changes by its
+# author's hand only, so this choice does not move between runs.
+_PLAN_LINE = 110
+
+Format = Callable[[Any], str]
+
+
+def lock_text(lock: Lock) -> str:
+    """Write a lock out, with its digest.
+
+    Parameters
+    ----------
+    lock : Lock
+        Any lock; a digest it carries already is not looked at.
+
+    Returns
+    -------
+    str
+        The text of the file: LF line ends, a final newline, the digest as its last line. The same
+        record gives the same text.
+    """
+    covered = covered_text(lock)
+    rest = "".join(f"{line}\n" for line in _fields(lock, ("environment",), ""))
+    return f"{covered}{rest}digest: {string_text(digest_of(covered.encode()))}\n"
+
+
+def sealed_lock(lock: Lock) -> Lock:
+    """Give a lock as it reads back from its file.
+
+    Parameters
+    ----------
+    lock : Lock
+        A lock made in memory.
+
+    Returns
+    -------
+    Lock
+        The same with its digest, and with every computed number as it is recorded.
+    """
+    digest = digest_of(covered_text(lock).encode())
+    recorded: Lock = _recorded(lock)
+    return recorded.model_copy(update={"digest": digest})
+
+
+def covered_text(lock: Lock) -> str:
+    """Write the part of a lock that its digest covers: all above the environment."""
+    return HEADER + "".join(f"{line}\n" for line in _fields(lock, _COVERED, ""))
+
+
+def one_line(value: object) -> str:
+    """Write any value of a lock as it would stand on one line of the file."""
+    return _flow(value)
+
+
+def write_lock(lock: Lock, path: str | os.PathLike[str]) -> None:
+    """Write a lock to a file, whole or not at all.
+
+    Parameters
+    ----------
+    lock : Lock
+        The lock.
+    path : path
+        Where it shall stand; what stands there is replaced.
+
+    Raises
+    ------
+    WriteError
+        The file cannot be written; what stood there is untouched.
+    """
+    write_whole(path, lock_text(lock).encode())
+
+
+def digest_of(covered: bytes) -> str:
+    """Take the digest of the bytes above the environment."""
+    return f"sha256:{hashlib.sha256(covered).hexdigest()}"
+
+
+def _nothing(_: None) -> str:
+    return "null"
+
+
+def _truth(value: bool) -> str:
+    return "true" if value else "false"
+
+
+_COMPUTED: Mapping[type, Format] = {
+    float: number_text,
+    str: string_text,
+    int: str,
+    bool: _truth,
+    type(None): _nothing,
+}
+_AS_GIVEN: Mapping[type, Format] = {**_COMPUTED, float: exact_text}
+
+
+@cache
+def _fields_of(kind: type[Record]) -> tuple[tuple[str, ...], Callable[[Any], Any]]:
+    """Names of a record's fields, and what takes their values in that order."""
+    names = tuple(kind.model_fields)
+    return names, attrgetter(*names)
+
+
+@cache
+def _template(kind: type[Record]) -> str:
+    """Make a record's flow line with a place for each value."""
+    return "{" + ", ".join(f"{name}: %s" for name in kind.model_fields) + "}"
+
+
+def _flow(value: Any, formats: Mapping[type, Format] = _COMPUTED) -> str:
+    """Any value on one line."""
+    scalar = formats.get(type(value))
+    if scalar is not None:
+        return scalar(value)
+    if isinstance(value, Record):
+        _, values_of = _fields_of(type(value))
+        return _template(type(value)) % tuple([_flow(item) for item in values_of(value)])
+    if isinstance(value, Mapping):
+        entries = [f"{string_text(key)}: {_flow(item, formats)}" for key, item in value.items()]
+        return "{" + ", ".join(entries) + "}"
+    return "[" + ", ".join([_flow(item, formats) for item in value]) + "]"
+
+
+def _fields(record: Record, names: tuple[str, ...], indent: str) -> Iterator[str]:
+    """Lines of a record in block style."""
+    for name in names:
+        value = getattr(record, name)
+        if isinstance(value, Record) and type(value) in _IN_BLOCKS:
+            yield f"{indent}{name}:"
+            yield from _block(value, f"{indent}  ")
+        elif isinstance(value, tuple) and value and (isinstance(value[0], Record) or name in _SENTENCES):
+            yield f"{indent}{name}:"
+            for item in value:
+                yield from _item(item, f"{indent}  ")
+        elif isinstance(value, Mapping) and _holds_records(value):
+            yield f"{indent}{name}:"
+            for key, item in value.items():
+                yield f"{indent}  {string_text(key)}:"
+                yield from _block(item, f"{indent}    ")
+        elif isinstance(value, Mapping) and value and name in _WRITTEN_BY_HAND:
+            yield f"{indent}{name}:"
+            yield from _plain_block(value, f"{indent}  ")
+        else:
+            yield f"{indent}{name}: {_flow(value)}"
+
+
+def _block(record: Record, indent: str) -> Iterator[str]:
+    """Lines of a whole record in block style."""
+    return _fields(record, tuple(type(record).model_fields), indent)
+
+
+def _item(item: Any, indent: str) -> Iterator[str]:
+    """Lines of an item of a list."""
+    if type(item) in _IN_BLOCKS:
+        lines = _block(item, f"{indent}  ")
+        yield f"{indent}- {next(lines).lstrip(' ')}"
+        yield from lines
+    else:
+        yield f"{indent}- {_flow(item)}"
+
+
+def _recorded(value: Any) -> Any:
+    """Round every computed number to what reads back; the plan's own numbers are written exactly."""
+    kind = type(value)
+    if kind is float:
+        return as_recorded(value)
+    if kind in _COMPUTED:
+        return value
+    if isinstance(value, Record):
+        names, values_of = _fields_of(type(value))
+        return type(value).model_validate(
+            {
+                name: item if name in _WRITTEN_BY_HAND and isinstance(item, Mapping) else _recorded(item)
+                for name, item in zip(names, values_of(value), strict=True)
+            }
+        )
+    if isinstance(value, Mapping):
+        return {key: _recorded(item) for key, item in value.items()}
+    return tuple([_recorded(item) for item in value])
+
+
+def _holds_records(value: Mapping[str, Any]) -> bool:
+    """Whether a mapping is one of records by name."""
+    return any(isinstance(item, Record) for item in value.values())
+
+
+def _plain_entry(key: str, value: Plain | Mapping[str, Plain], indent: str) -> Iterator[str]:
+    """Lines of one entry of plain data, in block style where one line would hold or be too much."""
+    name = string_text(key)
+    line = f"{indent}{name}: {_flow(value, _AS_GIVEN)}"
+    if (
+        not value
+        or not isinstance(value, tuple | Mapping)
+        or (len(line) <= _PLAN_LINE and not _is_table(value))
+    ):
+        yield line
+    elif isinstance(value, Mapping):
+        yield f"{indent}{name}:"
+        yield from _plain_block(value, f"{indent}  ")
+    else:
+        yield f"{indent}{name}:"
+        for item in value:
+            yield from _plain_item(item, f"{indent}  ")
+
+
+def _plain_block(value: Mapping[str, Plain], indent: str) -> Iterator[str]:
+    """Lines of a mapping of plain data in block style."""
+    for key, item in value.items():
+        yield from _plain_entry(key, item, indent)
+
+
+def _is_table(value: tuple[Plain, ...] | Mapping[str, Plain]) -> bool:
+    """Whether something is a list of mappings, such as predictors: each of them has its line."""
+    return isinstance(value, tuple) and any(isinstance(item, Mapping) for item in value)
+
+
+def _plain_item(item: Plain, indent: str) -> Iterator[str]:
+    """Lines of one item of plain data; a list within a list stays on one line."""
+    line = f"{indent}- {_flow(item, _AS_GIVEN)}"
+    if not item or not isinstance(item, Mapping) or len(line) <= _PLAN_LINE:
+        yield line
+        return
+    lines = _plain_block(item, f"{indent}  ")
+    yield f"{indent}- {next(lines).lstrip(' ')}"
+    yield from lines
