@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 
+import numpy as np
 from scipy.special import stdtrit
 
 from beforehand import wording
 from beforehand.fit.columns import Key
-from beforehand.fit.ladder import smeared
+from beforehand.fit.ladder import smeared, undo
 from beforehand.fit.multiplicity import benjamini_hochberg, holm
 from beforehand.fit.results import Coefficient, Fit
 from beforehand.lock import (
@@ -197,7 +199,10 @@ def _outcome(trail: Trail, final: Fitted) -> AnswerOutcome:
     if transform != IDENTITY:
         residuals = trail.bench.values(final.model).residual
         centre = trail.bench.moments(final.model).mean(final.model.outcome)
-        smearing = smeared(transform.rung, centre, residuals, transform.exponent).factor
+        estimate = smeared(transform.rung, centre, residuals, transform.exponent).mean
+        plain = float(undo(transform.rung, np.array([centre]), transform.exponent)[0])
+        # For a logarithm this is the mean of exp(residual), the same at every row.
+        smearing = estimate / plain if estimate is not None and math.isfinite(plain) and plain else None
     return AnswerOutcome(
         column=trail.plan.outcome.column,
         unit=trail.plan.outcome.unit,

@@ -139,7 +139,7 @@ def _alternative(
         status=_status(other),
         answer=answer,
         **_body(other, labels),
-        holds=not differences,
+        holds=not differences and other.status != "stopped",
         differences=differences,
     )
 

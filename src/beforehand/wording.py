@@ -174,7 +174,9 @@ def _dependence(ruling: Ruling) -> str:
         for name, value in ruling.evidence.items()
         if name.startswith("weight of ")
     ]
-    return f"{ruling.evidence.get('column')} = " + (" + ".join(weights) or "0")
+    if not weights:
+        return "one level only"
+    return f"{ruling.evidence.get('column')} = " + " + ".join(weights)
 
 
 def _final(what: str, good: str, bad: str) -> Mapping[str, Sentence]:

@@ -293,9 +293,10 @@ def _start(moments: Moments, keys: Sequence[Key], intercept: bool) -> tuple[Inte
     about = moments.about(keys, centred=intercept)
     raw = moments.about(keys, centred=False)
     half = [(int(about[i, i]).bit_length() + 1) // 2 for i in range(len(keys))]
-    up = np.array([1 << (2 * BITS - h) for h in half], object)
-    # (about << 4 BITS) >> (half_i + half_j) without a negative shift, then down to BITS.
-    matrix = ((about * up[:, None]) * up[None, :]) >> (3 * BITS)
+    # (about << 2 wide) >> (half_i + half_j) without a negative shift, then down to BITS.
+    wide = max(2 * BITS, *half) if half else 2 * BITS
+    up = np.array([1 << (wide - h) for h in half], object)
+    matrix = ((about * up[:, None]) * up[None, :]) >> (2 * wide - BITS)
     shifts = tuple(h + moments.units[p] for h, p in zip(half, moments.index(keys), strict=True))
     lengths = [(int(raw[i, i]) << BITS) >> (2 * half[i]) for i in range(len(keys))]
     return matrix, shifts, lengths
@@ -511,8 +512,9 @@ def triangle_of(moments: Moments, keys: Sequence[Key], *, intercept: bool) -> Fl
         gram[0, 0] = moments.n
         gram[0, 1:] = gram[1:, 0] = moments.sums[places]
     half = [(int(gram[i, i]).bit_length() + 1) // 2 for i in range(size)]
-    up = np.array([1 << (2 * BITS - h) if h <= 2 * BITS else 0 for h in half], object)
-    matrix = ((gram * up[:, None]) * up[None, :]) >> (3 * BITS)
+    wide = max(2 * BITS, *half) if half else 2 * BITS
+    up = np.array([1 << (wide - h) for h in half], object)
+    matrix = ((gram * up[:, None]) * up[None, :]) >> (2 * wide - BITS)
     lengths = [int(matrix[k, k]) for k in range(size)]
     out = np.zeros((size, size))
     for k in range(size):

@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 import inspect
-from collections.abc import Iterator, Mapping, Sequence
-from typing import Any, Literal, get_args, get_origin
+from collections.abc import Iterator, Sequence
+from typing import Any, get_args, get_origin
 
 from pydantic import BaseModel
 from pydantic.fields import FieldInfo
 
+from beforehand.fields import default_of, plain, words_of
 from beforehand.plan import Plan
 
 
@@ -60,45 +61,20 @@ def _models(annotation: Any, listed: bool = False) -> Iterator[tuple[type[BaseMo
 
 def _choices(annotation: Any) -> str:
     """The words that a field may hold, where they are a closed list."""
-    words = [f"`{word}`" for word in dict.fromkeys(_words(annotation))]
+    words = [f"`{word}`" for word in words_of(annotation)]
     if len(words) > 1:
         return ("any of " if get_origin(annotation) is tuple else "one of ") + ", ".join(words)
     return f"may be the word {words[0]}" if words and any(True for _ in _models(annotation)) else ""
-
-
-def _words(annotation: Any) -> Iterator[str]:
-    """Words of the literals in an annotation, models left aside."""
-    if get_origin(annotation) is Literal:
-        yield from (str(word) for word in get_args(annotation) if isinstance(word, str))
-        return
-    for part in get_args(annotation):
-        yield from _words(part)
 
 
 def _default(field: FieldInfo) -> str:
     """What holds when the field is not written."""
     if field.is_required():
         return "no default"
-    value = field.get_default(call_default_factory=True, validated_data={})
+    value = default_of(field)
     if isinstance(value, BaseModel):
         return ""
-    return f"default {_plain(value)}"
-
-
-def _plain(value: object) -> str:
-    """A default as it would be written in a plan."""
-    if value is None or value == () or value == {}:
-        return "none"
-    if isinstance(value, bool):
-        return "true" if value else "false"
-    if isinstance(value, str):
-        return value or '""'
-    if isinstance(value, tuple):
-        return "[" + ", ".join(_plain(part) for part in value) + "]"
-    if isinstance(value, Mapping):
-        return "{" + ", ".join(f"{key}: {_plain(part)}" for key, part in value.items()) + "}"
-    text = getattr(value, "text", None)
-    return text if isinstance(text, str) else f"{value}"
+    return f"default {'none' if value is None or value == () or value == {} else plain(value)}"
 
 
 def _sentence(text: str) -> str:

@@ -17,7 +17,7 @@ class AnswerOutcome(Record):
     transform: str = Field(description="Rung of the ladder on which it was fitted; identity for none.")
     exponent: float | None = Field(description="Learned exponent of a Box-Cox power.")
     smearing: float | None = Field(
-        description="Smearing factor of Duan (1983) that brings predictions back to the unit."
+        description="Duan's (1983) smearing estimate over the plain way back to the unit, at the mean."
     )
 
 

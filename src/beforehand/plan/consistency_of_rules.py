@@ -6,7 +6,7 @@ import itertools
 import math
 from collections.abc import Callable, Iterator, Mapping
 
-from beforehand.plan.blocks import FillValue
+from beforehand.plan.blocks import FillValue, Transforms
 from beforehand.plan.complaint import Complaint, near, repeated, repeats, unknown
 from beforehand.plan.model import Plan
 from beforehand.plan.numbers import number_text
@@ -191,7 +191,8 @@ def _ladder_of_predictors(plan: Plan) -> Iterator[Complaint]:
             what = _out_of_reach(ladder[0], predictor.column, predictor.range)
             rest = "" if len(ladder) == 1 else ", and no other rung in transforms.try can either"
             yield Complaint(f"predictors[{number}].range", what + rest, "ladder")
-    if numeric and len(ladder) > 1:
+    # The default ladder is nobody's claim about this table.
+    if numeric and len(ladder) > 1 and ladder != Transforms.defaults().try_:
         for number, rung in enumerate(ladder):
             if not any(can_apply(rung, predictor.range) for _, predictor in numeric):
                 what = f"is {rung}, which needs {_NEEDS[rung]}; no predictor's declared range has only such"

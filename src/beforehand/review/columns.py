@@ -12,7 +12,6 @@ from beforehand.fit.moments import Moments
 from beforehand.fit.tableau import dependence
 from beforehand.plan import Plan
 from beforehand.review.findings import Finding, caution, figure, listed, note, percent
-from beforehand.steps.designing import Designer
 from beforehand.steps.keeping import Keeping
 from beforehand.steps.recording import column_name
 from beforehand.steps.source import TableSource
@@ -99,9 +98,7 @@ NO_COLUMNS = Columns(
 )
 
 
-def columns_of(
-    plan: Plan, source: TableSource, designer: Designer, model: Model, moments: Moments
-) -> tuple[Columns, Model]:
+def columns_of(plan: Plan, source: TableSource, model: Model, moments: Moments) -> tuple[Columns, Model]:
     """Look at the predictors of the complete rows; also the model less what others determine.
 
     Parameters

@@ -6,10 +6,10 @@ A reader takes a written rule for one that holds. One that cannot act is worse t
 from __future__ import annotations
 
 from collections.abc import Callable, Iterator
-from typing import Any
 
 from pydantic import BaseModel
 
+from beforehand.fields import default_of
 from beforehand.plan import Plan
 from beforehand.review.blocks import (
     bound_of,
@@ -34,20 +34,15 @@ def differs(block: BaseModel, *, but: tuple[str, ...] = ()) -> tuple[str, ...]:
     return tuple(
         field.alias or name
         for name, field in type(block).model_fields.items()
-        if name not in but and getattr(block, name) != _default(block, name)
+        if name not in but and getattr(block, name) != default_of(field)
     )
-
-
-def _default(block: BaseModel, name: str) -> Any:
-    """What a field of a block holds when it is not written."""
-    return type(block).model_fields[name].get_default(call_default_factory=True, validated_data={})
 
 
 def _data(plan: Plan) -> Iterator[Finding]:
     if plan.data.labels_in_lock == "hashed" and plan.data.row_label is None:
         yield caution(
             "hashed-labels-idle", "data.labels_in_lock",
-            "Labels are to be hashed and no column labels the rows, so there is nothing to hash.",
+            "Labels are to be hashed and no column labels the rows, so only row numbers are hidden.",
         )  # fmt: skip
 
 

@@ -96,13 +96,12 @@ def screened(plan: Plan, table: Table) -> Screening:
     """
     state, base, _ = missing_data(plan, table, declared="missing_data" in plan.steps)
     source = TableSource.of(table, base)
-    designer = Designer(plan, source)
-    model = designer.model(state)
+    model = Designer(plan, source).model(state)
     columns = NO_COLUMNS
     inflation: tuple[tuple[str, float], ...] = ()
     if model.rows.n and model.keys:
         moments = moments_of(source, model.keys)
-        columns, independent = columns_of(plan, source, designer, model, moments)
+        columns, independent = columns_of(plan, source, model, moments)
         if independent.keys and model.rows.n > independent.p:
             found = inflation_of(moments, blocks_of(independent), intercept=independent.intercept)
             inflation = tuple((term.name, found[term.name]) for term in independent.terms if term.single)

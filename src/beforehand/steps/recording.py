@@ -251,6 +251,10 @@ class RecordingBench:
 
     def dependence(self, model: Model) -> Linked | None:
         """The first exact linear dependence among the columns, in plan order."""
+        # A category of which one level is left, or a product of it, has no column at all.
+        empty = next((term.name for term in model.terms if not term.keys), None)
+        if empty is not None:
+            return Linked(predictor=empty, column=empty, weights=(), constant=True, members=(empty,))
         moments = self._with(model.rows, (*model.keys, model.outcome))
         found = dependence(moments, model.keys, intercept=model.intercept)
         if found is None:
@@ -533,6 +537,13 @@ class RecordingBench:
     def _robust(self, model: Model, fit: Fit, errors: str) -> Fit:
         """The fit with other standard errors."""
         plain = replace(model, errors="classical")
+        sole = np.flatnonzero(self.values(plain).leverage >= 1.0)
+        if errors in ("hc2", "hc3") and len(sole):
+            label = self._source(model.rows).label(int(sole[0]))
+            raise robust.NotEstimable(
+                f"row {label} alone makes a coefficient (leverage 1), so {errors} standard errors do not "
+                "exist for this model: declare other errors, or leave the row or the predictor out"
+            )
         lags = getattr(self._plan.errors, "autocorrelation_lags", None)
         return robust.robust_fit(
             fit,

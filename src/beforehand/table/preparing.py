@@ -154,7 +154,8 @@ def canonical_order(plan: Plan, read: AsRead) -> NDArray[np.int64]:
     for name in sorted(read.columns):
         key = _sortable(read.columns[name])
         order = np.lexsort((key, rank)).astype(np.int64)
-        step = (np.diff(key[order]) != 0) | (np.diff(rank[order]) != 0)
+        sorted_key, sorted_rank = key[order], rank[order]
+        step = (sorted_key[1:] != sorted_key[:-1]) | (sorted_rank[1:] != sorted_rank[:-1])
         rank[order] = np.concatenate([[0], np.cumsum(step)])
         if int(rank.max(initial=0)) == read.n_rows - 1:
             break

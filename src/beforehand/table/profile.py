@@ -174,7 +174,7 @@ def _profile(
         return ColumnProfile(name=name, kind="constant", share_missing=share, levels=tuple(distinct), distinct=1)
     if all(_DATE.fullmatch(cell) for cell in distinct):
         return ColumnProfile(name=name, kind="date", share_missing=share, distinct=len(distinct))
-    values, faults = numbers_of(present, Data(file="", decimal=decimal), "", name, str, ())
+    values, faults = numbers_of(present, Data(file="table.csv", decimal=decimal), "", name, str, ())
     if not faults:
         decimals = max(len(cell.partition(decimal)[2]) for cell in distinct)
         return ColumnProfile(
