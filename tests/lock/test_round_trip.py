@@ -103,7 +103,8 @@ def test_any_lock_comes_back_and_is_written_the_same(lock: Lock) -> None:
 def plain(value: Any) -> Any:
     """Turn a record into what a reader of YAML gives."""
     if isinstance(value, Record):
-        return {name: plain(getattr(value, name)) for name in type(value).model_fields}
+        fields = {name: plain(getattr(value, name)) for name in type(value).model_fields}
+        return {name: item for name, item in fields.items() if item is not None or name not in value.left_out}
     if isinstance(value, Mapping):
         return {key: plain(item) for key, item in value.items()}
     return [plain(item) for item in value] if isinstance(value, tuple) else value

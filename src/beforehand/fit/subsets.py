@@ -82,6 +82,9 @@ def best_subsets(
     scale = np.sqrt(np.where(np.diag(cross) > 0, np.diag(cross), 1.0))
     unit = cross / np.outer(scale, scale)
     total = float(unit[-1, -1])
+    if total <= 0.0:
+        # The outcome does not vary in these rows: no predictor can be significant.
+        return ()
     everything = _swept(unit, [column for block in blocks for column in block])
     order = _strongest_first(everything, blocks)
     search = _Search(blocks, n, constant, alpha, total, lawful, held, order)

@@ -389,7 +389,8 @@ def fit_of(tableau: Tableau, blocks: Mapping[str, tuple[Key, ...]]) -> Fit:
     tests = {name: _test(name, keys, tableau, coefficients, exact) for name, keys in blocks.items()}
     r2 = float(1 - rss / tss) if tss else 0.0
     if exact:
-        r2 = 1.0
+        # Nothing is explained where nothing varies.
+        r2 = 1.0 if tss else 0.0
     model_df = len(tableau.keys)
     f = None if exact or not model_df or rss == 0 else float(((tss - rss) / model_df) / (rss / df))
     total_df = n - int(tableau.intercept)
@@ -397,7 +398,7 @@ def fit_of(tableau: Tableau, blocks: Mapping[str, tuple[Key, ...]]) -> Fit:
     return Fit(
         n=n, p=p, df_residual=df, df_inference=df, coefficients=tuple(coefficients), tests=tests,
         rss=0.0 if exact else float(rss), tss=float(tss), r_squared=r2,
-        adjusted_r_squared=1.0 if exact else float(1 - (rss / df) / (tss / total_df)),
+        adjusted_r_squared=r2 if exact else float(1 - (rss / df) / (tss / total_df)),
         residual_sd=_sqrt(s2), f=f, f_df=(model_df, df),
         f_p=None if f is None else float(fdtrc(model_df, df, f)),
         aic=None if log_likelihood_part is None else log_likelihood_part + 2 * p,

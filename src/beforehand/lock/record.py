@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from typing import Annotated, Any
+from typing import Annotated, Any, ClassVar
 
 from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field
 from typing_extensions import TypeAliasType
@@ -16,6 +16,9 @@ LONGEST_KEY = 1000
 
 class Record(BaseModel):
     """A frozen part of a lock: nothing is coerced, nothing unknown is let in, no number is infinite."""
+
+    # Fields that are not written where they are null.
+    left_out: ClassVar[frozenset[str]] = frozenset()
 
     model_config = ConfigDict(frozen=True, extra="forbid", strict=True, allow_inf_nan=False)
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from typing import Literal
+from typing import ClassVar, Literal
 
 from pydantic import Field
 
@@ -74,11 +74,13 @@ class FitOutcome(Record):
 class FitTerm(Record):
     """One coefficient of a fit."""
 
+    left_out: ClassVar[frozenset[str]] = frozenset({"transform", "exponent", "level"})
+
     term: str = Field(description="Name of the term: intercept, a predictor, a level or a product.")
     predictor: str | None = Field(description="Predictor of the plan to which it belongs.")
-    transform: str | None = Field(description="Rung of the ladder under which the predictor stands.")
-    exponent: float | None = Field(description="Learned exponent of a Box-Cox power.")
-    level: str | None = Field(description="Level of a category whose indicator this is.")
+    transform: str | None = Field(default=None, description="Rung of the ladder under which the predictor stands.")
+    exponent: float | None = Field(default=None, description="Learned exponent of a Box-Cox power.")
+    level: str | None = Field(default=None, description="Level of a category whose indicator this is.")
     coefficient: float = Field(description="Estimate, in units of the fitted outcome per unit of the term.")
     standard_error: float | None = Field(description="Standard error by the errors of the fit.")
     t: float | None = Field(description="Coefficient over its standard error.")

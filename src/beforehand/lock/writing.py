@@ -145,9 +145,9 @@ def _fields_of(kind: type[Record]) -> tuple[tuple[str, ...], Callable[[Any], Any
 
 
 @cache
-def _template(kind: type[Record]) -> str:
+def _template(names: tuple[str, ...]) -> str:
     """Make a record's flow line with a place for each value."""
-    return "{" + ", ".join(f"{name}: %s" for name in kind.model_fields) + "}"
+    return "{" + ", ".join([f"{name}: %s" for name in names]) + "}"
 
 
 def _flow(value: Any, formats: Mapping[type, Format] = _COMPUTED) -> str:
@@ -156,8 +156,13 @@ def _flow(value: Any, formats: Mapping[type, Format] = _COMPUTED) -> str:
     if scalar is not None:
         return scalar(value)
     if isinstance(value, Record):
-        _, values_of = _fields_of(type(value))
-        return _template(type(value)) % tuple([_flow(item) for item in values_of(value)])
+        names, values_of = _fields_of(type(value))
+        values = values_of(value)
+        if value.left_out:
+            # What most records have not is left out where it is null, so that a line can be read.
+            present = [n for n, item in enumerate(values) if item is not None or names[n] not in value.left_out]
+            names, values = tuple([names[n] for n in present]), [values[n] for n in present]
+        return _template(names) % tuple([_flow(item) for item in values])
     if isinstance(value, Mapping):
         entries = [f"{string_text(key)}: {_flow(item, formats)}" for key, item in value.items()]
         return "{" + ", ".join(entries) + "}"
