@@ -69,8 +69,8 @@ def run_on(table: dict[str, list], outcome: str, **blocks: object) -> Run:
 
 
 def rulings(done: Run, step: str) -> list[tuple[str, str]]:
-    """Subject and verdict of every ruling of a step, in order."""
-    return [(ruling.subject, ruling.verdict) for ruling in done.lock.rulings if ruling.step == step]
+    """Subject and ground of every ruling of a step, in order."""
+    return [(ruling.subject, ruling.ground) for ruling in done.lock.rulings if ruling.step == step]
 
 
 def terms(done: Run) -> dict[str, object]:

@@ -177,7 +177,7 @@ def test_units_scale_a_coefficient_and_move_no_ruling(seed, factor):
     }  # fmt: skip
     before = run(plan_from_mapping(plan), frame).lock
     after = run(plan_from_mapping(plan), frame.assign(a=frame["a"] * factor)).lock
-    assert [(r.subject, r.verdict) for r in before.rulings] == [(r.subject, r.verdict) for r in after.rulings]
+    assert [(r.subject, r.ground) for r in before.rulings] == [(r.subject, r.ground) for r in after.rulings]
     old = {term.term: term for term in before.answer.terms}
     for term in after.answer.terms:
         if term.term == "a" and term.transform is None:

@@ -299,7 +299,7 @@ def _full_model(trail: Trail) -> str | None:
 
 # Rulings that choose between ways: what they chose could have been otherwise.
 def _decides(ruling: Ruling) -> bool:
-    return ruling.margin is not None and bool(ruling.limit) and not ruling.verdict.startswith("kept_always")
+    return ruling.margin is not None and bool(ruling.limit) and not ruling.ground.startswith("kept_always")
 
 
 def _fragility(rulings: Sequence[Ruling]) -> Fragility | None:
@@ -324,7 +324,7 @@ def cautions_of(trail: Trail, final: Fitted) -> tuple[str, ...]:
         cap_reached=trail.state.cap_reached,
         exact=final.fit.exact,
         unmended=trail.state.unmended,
-        failed=[ruling for ruling in trail.rulings if "_fails_" in ruling.verdict],
+        failed=[ruling for ruling in trail.rulings if "_fails_" in ruling.ground],
         selected="selection" in trail.plan.steps and trail.plan.selection.method != "none",
         filled=bool(trail.base.fills),
         rows_per_coefficient=final.fit.n / final.fit.p,

@@ -222,13 +222,13 @@ def _fates(trail: Trail) -> dict[str, PredictorFate]:
 def _ends(ruling: Ruling, name: str) -> bool:
     """Whether a ruling says why a predictor is in the final model."""
     return ruling.subject == name and (
-        ruling.verdict in ("stays", "stays_above_alpha", "near_miss") or ruling.verdict.startswith("kept_")
+        ruling.ground in ("stays", "stays_above_alpha", "near_miss") or ruling.ground.startswith("kept_")
     )
 
 
 def _ruling(ruling: Ruling, trail: Trail, labels: Labels) -> RulingRecord:
     """A ruling with its sentence; a row's label stands as the plan lets it."""
-    is_row = ruling.verdict.startswith("row_") or ruling.verdict == "cap_reached"
+    is_row = ruling.ground.startswith("row_") or ruling.ground == "cap_reached"
     subject = labels(ruling.subject) if is_row else ruling.subject
     says = wording.sentence(ruling)
     if is_row and subject != ruling.subject:
@@ -244,7 +244,8 @@ def _ruling(ruling: Ruling, trail: Trail, labels: Labels) -> RulingRecord:
         limit=None if ruling.limit is None else float(ruling.limit),
         margin=ruling.margin,
         knife_edge=ruling.knife_edge,
-        verdict=ruling.verdict,
+        verdict=wording.verdict_of(ruling.ground),
+        ground=ruling.ground,
         because=ruling.because,
         says=says,
     )

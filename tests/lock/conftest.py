@@ -32,6 +32,7 @@ from beforehand.lock import (
     RulingRecord,
     SealRecord,
 )
+from beforehand.wording import verdict_of
 
 DIGEST = "sha256:" + "0123456789abcdef" * 4
 
@@ -88,7 +89,7 @@ def fit(number: str, step: str, rows: int, **coefficients: float) -> FitRecord:
     )
 
 
-def ruling(number: str, step: str, clause: str, subject: str, verdict: str, **given: Any) -> RulingRecord:
+def ruling(number: str, step: str, clause: str, subject: str, ground: str, **given: Any) -> RulingRecord:
     """Make a ruling; what is not given is empty."""
     fields: dict[str, Any] = {
         "fits": (),
@@ -98,10 +99,10 @@ def ruling(number: str, step: str, clause: str, subject: str, verdict: str, **gi
         "margin": None,
         "knife_edge": False,
         "because": None,
-        "says": f"{subject}: {verdict}.",
+        "says": f"{subject}: {ground}.",
     }
     return RulingRecord(
-        id=number, step=step, clause=clause, subject=subject, verdict=verdict, **{**fields, **given}
+        id=number, step=step, clause=clause, subject=subject, verdict=verdict_of(ground), ground=ground, **{**fields, **given}
     )
 
 

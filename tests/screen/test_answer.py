@@ -103,7 +103,7 @@ def test_a_mean_is_written_up_as_an_answer(hives: dict[str, Any], lock_of: LockO
     for fate in hives["predictors"].values():
         fate.update(verdict="removed", ruling="R010")
     hives["rulings"][9].update(
-        verdict="weak_without_theory", says="No theory backs a predictor, so the mean is the answer."
+        ground="weak_without_theory", says="No theory backs a predictor, so the mean is the answer."
     )
     hives["alternatives"] = {}
     text = answer_text(lock_of(hives), RECORD)
@@ -148,7 +148,7 @@ def test_a_stopped_run_names_the_ruling_and_gives_no_answer(hives: dict[str, Any
     hives.update(status="stopped", answer=None, fits=[], alternatives={}, rows_removed=[])
     hives["rulings"] = [
         hives["rulings"][0],
-        hives["rulings"][1] | {"verdict": "kept_without_fill", "says": says},
+        hives["rulings"][1] | {"ground": "kept_without_fill", "says": says},
     ]
     hives["ledger"] = hives["ledger"][:3]
     for fate in hives["predictors"].values():

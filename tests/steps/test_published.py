@@ -13,7 +13,7 @@ BACKWARD = ["selection"]
 def test_cement_backward_elimination_drops_x3_then_x4(alpha):
     """Draper & Smith: backward elimination drops x3 (F 0.018), then x4 (F 1.86), and stops at x1, x2."""
     done = run_on(CEMENT, "y", alpha=alpha, steps=BACKWARD)
-    left = [r for r in done.lock.rulings if r.verdict == "leaves_backward"]
+    left = [r for r in done.lock.rulings if r.ground == "leaves_backward"]
     assert [r.subject for r in left] == ["x3", "x4"]
     assert left[0].evidence["p"] == pytest.approx(0.8959227, abs=5e-8)
     assert left[1].evidence["p"] == pytest.approx(0.2053954, abs=5e-8)
@@ -43,7 +43,7 @@ def test_cement_with_keep_rules(kept, expected, p_of_last):
 def test_longley_backward_elimination():
     """Longley at 0.10 drops GNPDEFL (p .863141), then POP (p .641607)."""
     done = run_on(LONGLEY, "TOTEMP", alpha=0.10, steps=BACKWARD)
-    left = [r for r in done.lock.rulings if r.verdict == "leaves_backward"]
+    left = [r for r in done.lock.rulings if r.ground == "leaves_backward"]
     assert [r.subject for r in left] == ["GNPDEFL", "POP"]
     assert [r.evidence["p"] for r in left] == pytest.approx([0.863141, 0.641607], abs=5e-7)
     assert [t.coefficient for t in terms(done).values()] == pytest.approx(
@@ -99,7 +99,7 @@ def test_anscombe_three_loses_one_row():
     """Table 3: the row at x = 13 leaves; without it y = 4.00565 + 0.345390 x."""
     done = anscombe(3)
     assert len(done.lock.rows_removed) == 1
-    ruling = next(r for r in done.lock.rulings if r.step == "influence" and r.verdict.startswith("row_leaves"))
+    ruling = next(r for r in done.lock.rulings if r.step == "influence" and r.ground.startswith("row_leaves"))
     assert ruling.evidence["studentized_residual"] == pytest.approx(1203.5395, rel=1e-6)
     assert ruling.evidence["cooks_distance"] == pytest.approx(1.392849, rel=1e-6)
     assert [t.coefficient for t in terms(done).values()] == pytest.approx([4.00564935, 0.34538961], rel=1e-8)

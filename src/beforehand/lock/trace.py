@@ -179,7 +179,7 @@ def _role(ruling: RulingRecord, name: str, parts: Sequence[str], *, decided: boo
     if evidence.get("partner") == name:
         return "partner"
     in_pair = ruling.subject.startswith(f"{name}, ") or ruling.subject.endswith(f", {name}")
-    if in_pair and ruling.verdict == _OF_A_PAIR:
+    if in_pair and ruling.ground == _OF_A_PAIR:
         return "partner"
     if decided:
         return "part" if ruling.subject in parts else "member"
@@ -310,7 +310,7 @@ def _labels(lock: Lock) -> dict[str, None]:
     capped = [
         ruling.subject
         for ruling in lock.rulings
-        if ruling.verdict == "cap_reached" and ruling.clause.startswith(_ROW_CLAUSES)
+        if ruling.ground == "cap_reached" and ruling.clause.startswith(_ROW_CLAUSES)
     ]
     return dict.fromkeys([*named, *capped])
 

@@ -51,7 +51,8 @@ class RulingRecord(Record):
     limit: float | None = Field(description="The limit in the plan.")
     margin: float | None = Field(description="Distance of the evidence from the limit.")
     knife_edge: bool = Field(description="Whether the margin is within the rounding of the evidence.")
-    verdict: str = Field(description="What was decided.")
+    verdict: str = Field(description="What was decided, in one word such as keep, remove, transform or stop.")
+    ground: str = Field(description="The ground on which it was decided, as a code.")
     because: str | None = Field(description="The plan's own reason, where one decided.")
     says: str = Field(description="The same in a sentence.")
 

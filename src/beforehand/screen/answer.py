@@ -126,9 +126,9 @@ def stopping_ruling(lock: Lock) -> RulingRecord | None:
     stops = [
         ruling
         for ruling in lock.rulings
-        if ruling.verdict.startswith("stops_")
-        or ruling.verdict.endswith("_stop")
-        or ruling.verdict in ("kept_without_fill", "nothing_to_learn_from")
+        if ruling.ground.startswith("stops_")
+        or ruling.ground.endswith("_stop")
+        or ruling.ground in ("kept_without_fill", "nothing_to_learn_from")
     ]
     return stops[-1] if stops else (lock.rulings[-1] if lock.rulings else None)
 

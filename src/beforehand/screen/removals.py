@@ -94,7 +94,7 @@ def kept_lines(lock: Lock, width: int) -> tuple[str, ...]:
     """Rulings in which a keep rule or a product prevented a removal, once a rule and predictor."""
     last: dict[tuple[str, str], RulingRecord] = {}
     for ruling in lock.rulings:
-        if ruling.verdict.startswith("kept_") and ruling.verdict != "kept_without_fill":
+        if ruling.ground.startswith("kept_") and ruling.ground != "kept_without_fill":
             last[ruling.subject, ruling.clause] = ruling
     kept = sorted(last.values(), key=lambda ruling: ruling.id)
     lines: list[str] = []

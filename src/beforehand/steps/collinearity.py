@@ -256,12 +256,12 @@ def _both(examined: Examined, state: State, plan: Plan, keeping: Keeping, ruling
     follow = plan.collinearity.if_large if large else plan.collinearity.if_small
     clause = "collinearity.if_large" if large else "collinearity.if_small"
     if follow == "keep_both":
-        verdict = "large_change_both_stay" if large else "small_change_both_stay"
-        _rule(rulings, examined, clause, weaker, verdict, plan, evidence, value, limit)
+        ground = "large_change_both_stay" if large else "small_change_both_stay"
+        _rule(rulings, examined, clause, weaker, ground, plan, evidence, value, limit)
         return state
-    verdict = "large_change_weaker_leaves" if large else "small_change_weaker_leaves"
+    ground = "large_change_weaker_leaves" if large else "small_change_weaker_leaves"
     return _remove(
-        weaker, examined, clause, verdict, state, plan, keeping, rulings, evidence, value, limit
+        weaker, examined, clause, ground, state, plan, keeping, rulings, evidence, value, limit
     )
 
 
@@ -284,7 +284,7 @@ def _remove(
     name: str,
     examined: Examined,
     clause: str,
-    verdict: str,
+    ground: str,
     state: State,
     plan: Plan,
     keeping: Keeping,
@@ -298,11 +298,11 @@ def _remove(
     hold = keeping.hold(name, state.working, p)
     if hold is not None:
         rulings.add(
-            hold.clause, name, hold.verdict, fits=examined.ids,
-            evidence={"p": p, "would_have": verdict}, value=p, limit=hold.limit, because=hold.because,
+            hold.clause, name, hold.ground, fits=examined.ids,
+            evidence={"p": p, "would_have": ground}, value=p, limit=hold.limit, because=hold.because,
         )  # fmt: skip
         return state
-    ruling = _rule(rulings, examined, clause, name, verdict, plan, evidence, value, limit)
+    ruling = _rule(rulings, examined, clause, name, ground, plan, evidence, value, limit)
     return state.leaves(name, step=STEP, ruling=ruling.id)
 
 
@@ -311,7 +311,7 @@ def _rule(
     examined: Examined,
     clause: str,
     name: str,
-    verdict: str,
+    ground: str,
     plan: Plan,
     evidence: dict[str, float | str] | None = None,
     value: float | None = None,
@@ -331,8 +331,8 @@ def _rule(
     numbers |= evidence or {}
     if value is None:
         value, limit = examined.both.p_of(name), plan.alpha
-        if verdict in ("both_leave", "significant_alone_stays"):
+        if ground in ("both_leave", "significant_alone_stays"):
             value = examined.alone_p(name)
     return rulings.add(
-        clause, name, verdict, fits=examined.ids, evidence=numbers, value=value, limit=limit
+        clause, name, ground, fits=examined.ids, evidence=numbers, value=value, limit=limit
     )

@@ -38,7 +38,7 @@ def _resolve(
     """Remove the latest member that nothing holds, or stop."""
     evidence: dict[str, float | str | int | bool | None] = {"column": linked.column}
     evidence |= {f"weight of {name}": weight for name, weight in linked.weights}
-    verdict = "constant" if linked.constant else "dependent"
+    ground = "constant" if linked.constant else "dependent"
     # A product hangs on its parts: where a part is determined, its product is the later predictor.
     members = [
         name
@@ -48,8 +48,8 @@ def _resolve(
     for name in members:
         hold = keeping.hold(name, state.working, None)
         if hold is None:
-            ruling = rulings.add("collinearity", name, f"leaves_{verdict}", evidence=evidence)
+            ruling = rulings.add("collinearity", name, f"leaves_{ground}", evidence=evidence)
             return state.leaves(name, step=step, ruling=ruling.id)
-        rulings.add(hold.clause, name, hold.verdict, evidence=evidence, because=hold.because)
-    rulings.add("collinearity", linked.predictor, f"stops_{verdict}", evidence=evidence)
+        rulings.add(hold.clause, name, hold.ground, evidence=evidence, because=hold.because)
+    rulings.add("collinearity", linked.predictor, f"stops_{ground}", evidence=evidence)
     return replace(state, status="stopped")

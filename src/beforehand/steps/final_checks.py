@@ -31,7 +31,7 @@ def final_checks(state: State, plan: Plan, bench: Bench) -> tuple[State, tuple[R
     return replace(state, rulings_made=rulings.count), tuple(rulings.made)
 
 
-def _verdict(
+def _ruled(
     state: State,
     rulings: Rulings,
     clause: str,
@@ -43,13 +43,13 @@ def _verdict(
     """One check: passed, not applicable, or failed and then what the plan calls for."""
     check = checked.check
     if check.p is None:
-        verdict = f"{name}_not_checked"
+        ground = f"{name}_not_checked"
     elif not checked.failed:
-        verdict = f"{name}_passes"
+        ground = f"{name}_passes"
     else:
-        verdict = f"{name}_fails_{action}"
+        ground = f"{name}_fails_{action}"
     rulings.add(
-        clause, subject, verdict, fits=(checked.fit,), checks=(checked.id,),
+        clause, subject, ground, fits=(checked.fit,), checks=(checked.id,),
         evidence={"check": check.name, "statistic": check.statistic, "p": check.p},
         value=check.p, limit=checked.alpha if check.p is not None else None,
         because=check.not_applicable or None,
@@ -69,9 +69,9 @@ def _curvature(state: State, plan: Plan, bench: Bench, fitted: Fitted, rulings: 
         name = predictor.column
         if name in state.working and predictor.kind == "number":
             checked = bench.curvature(fitted, name, block.alpha)
-            state = _verdict(state, rulings, "final_checks.if_curved", name, checked, action, "curvature")
+            state = _ruled(state, rulings, "final_checks.if_curved", name, checked, action, "curvature")
     checked = bench.reset(fitted, block.alpha)
-    return _verdict(state, rulings, "final_checks.if_curved", "the model", checked, action, "reset")
+    return _ruled(state, rulings, "final_checks.if_curved", "the model", checked, action, "reset")
 
 
 def _spread(state: State, plan: Plan, bench: Bench, fitted: Fitted, rulings: Rulings) -> State:
@@ -83,7 +83,7 @@ def _spread(state: State, plan: Plan, bench: Bench, fitted: Fitted, rulings: Rul
     action = plan.final_checks.if_spread_unequal
     if action == "robust_errors" and state.errors != "classical":
         action = "report"
-    state = _verdict(
+    state = _ruled(
         state, rulings, "final_checks.if_spread_unequal", "the model", checked, action, "spread"
     )
     if not checked.failed or action != "robust_errors":
@@ -113,7 +113,7 @@ def _normality(state: State, plan: Plan, bench: Bench, fitted: Fitted, rulings: 
     if block == "skip":
         return state
     checked = bench.normality(fitted, block.test, block.alpha)
-    return _verdict(
+    return _ruled(
         state, rulings, "final_checks.if_not_normal", "the model", checked,
         plan.final_checks.if_not_normal, "normality",
     )  # fmt: skip
@@ -128,7 +128,7 @@ def _independence(state: State, plan: Plan, bench: Bench, fitted: Fitted, ruling
     action = plan.final_checks.if_dependent
     clause = "final_checks.if_dependent"
     if block.test != "durbin_watson" or block.between is None or checked.check.statistic is None:
-        return _verdict(state, rulings, clause, "the model", checked, action, "independence")
+        return _ruled(state, rulings, clause, "the model", checked, action, "independence")
     low, high = block.between
     statistic = checked.check.statistic
     inside = low <= statistic <= high

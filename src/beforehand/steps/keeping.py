@@ -12,7 +12,7 @@ class Hold:
     """What prevents a removal: the clause, the plan's reason, and the bound where it has one."""
 
     clause: str
-    verdict: str
+    ground: str
     because: str | None
     limit: float | None = None
 

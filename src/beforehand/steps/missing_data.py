@@ -173,7 +173,7 @@ def _too_empty(
             state = state.leaves(name, step=STEP, ruling=ruling.id)
             continue
         rulings.add(
-            hold.clause, name, hold.verdict, evidence=evidence, value=share, limit=limit, because=hold.because
+            hold.clause, name, hold.ground, evidence=evidence, value=share, limit=limit, because=hold.because
         )
         if name not in plan.missing_data.fill:
             rulings.add("missing_data.fill", name, "kept_without_fill", evidence=evidence)

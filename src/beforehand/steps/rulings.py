@@ -24,8 +24,8 @@ class Ruling:
         The step and the place in the plan on which the decision rests.
     subject : str
         The predictor, row or check that the decision is about.
-    verdict : str
-        What was decided; wording is made from it, the step and the evidence.
+    ground : str
+        What was decided and on what ground, as a code; the sentence and the verdict are made from it.
     fits, checks : tuple of str
         What the evidence can be recomputed from.
     evidence : mapping
@@ -42,7 +42,7 @@ class Ruling:
     step: str
     clause: str
     subject: str
-    verdict: str
+    ground: str
     fits: tuple[str, ...] = ()
     checks: tuple[str, ...] = ()
     evidence: Evidence = field(default_factory=dict)
@@ -77,7 +77,7 @@ class Rulings:
         self,
         clause: str,
         subject: str,
-        verdict: str,
+        ground: str,
         *,
         fits: tuple[str, ...] = (),
         checks: tuple[str, ...] = (),
@@ -93,7 +93,7 @@ class Rulings:
             step=self.step,
             clause=clause,
             subject=subject,
-            verdict=verdict,
+            ground=ground,
             fits=fits,
             checks=checks,
             evidence=dict(evidence or {}),

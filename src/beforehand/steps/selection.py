@@ -105,7 +105,7 @@ def _held(
     if hold is not None and (name, hold.clause) not in seen:
         seen.add((name, hold.clause))
         rulings.add(
-            hold.clause, name, hold.verdict, fits=(fitted.id,), evidence={"p": p, "alpha": alpha},
+            hold.clause, name, hold.ground, fits=(fitted.id,), evidence={"p": p, "alpha": alpha},
             value=p, limit=alpha if hold.limit is None else hold.limit, because=hold.because,
         )  # fmt: skip
     return hold

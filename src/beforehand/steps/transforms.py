@@ -89,7 +89,7 @@ def _unmended(
     hold = Keeping(plan).hold(name, state.working, p)
     if hold is not None:
         rulings.add(
-            hold.clause, name, hold.verdict, fits=(fitted.id,), evidence={"p": p},
+            hold.clause, name, hold.ground, fits=(fitted.id,), evidence={"p": p},
             value=p, limit=hold.limit, because=hold.because,
         )  # fmt: skip
         return state
