@@ -27,7 +27,11 @@ def tables(draw) -> pd.DataFrame:
     rng = np.random.default_rng(draw(st.integers(0, 10_000)))
     frame = pd.DataFrame({name: rng.normal(size=n) for name in NAMES})
     for name in NAMES:
-        match draw(st.sampled_from(["plain", "plain", "round", "two", "constant", "positive", "huge", "copy", "near"])):
+        match draw(
+            st.sampled_from(
+                ["plain", "plain", "round", "two", "constant", "positive", "huge", "copy", "near"]
+            )
+        ):
             case "round":
                 frame[name] = frame[name].round(0)
             case "two":
@@ -114,7 +118,9 @@ def plans(draw) -> dict:
     if len(names) > 2 and draw(st.booleans()):
         plan.setdefault("keep", []).append({"at_least_one_of": names[1:3], "because": "One of them."})
     if draw(st.integers(0, 4)) == 0:
-        plan["outcome"]["transforms"] = draw(st.lists(st.sampled_from(RUNGS), min_size=1, max_size=2, unique=True))
+        plan["outcome"]["transforms"] = draw(
+            st.lists(st.sampled_from(RUNGS), min_size=1, max_size=2, unique=True)
+        )
     return plan
 
 

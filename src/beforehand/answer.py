@@ -101,9 +101,7 @@ def shown_exponent(transform: Transform) -> float | None:
     return transform.exponent if transform.rung == "box_cox" else None
 
 
-def _term(
-    coefficient: Coefficient, trail: Trail, final: Fitted, adjusted: dict[str, float]
-) -> AnswerTerm:
+def _term(coefficient: Coefficient, trail: Trail, final: Fitted, adjusted: dict[str, float]) -> AnswerTerm:
     """One coefficient with its interval at 1 - alpha and its standardized size."""
     fit, model = final.fit, final.model
     predictor, rung, exponent, level = transform_of(model, coefficient.key)

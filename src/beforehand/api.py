@@ -195,7 +195,16 @@ def _reader(data: str | os.PathLike[str] | pd.DataFrame | None) -> Callable[[Pla
 
 def _same_contract(plan: Plan, changed: Plan) -> bool:
     """Whether two plans read the same table from the same file."""
-    parts = ("data", "eligibility", "derive", "outcome", "predictors", "missing_data", "errors", "assumptions")
+    parts = (
+        "data",
+        "eligibility",
+        "derive",
+        "outcome",
+        "predictors",
+        "missing_data",
+        "errors",
+        "assumptions",
+    )
     return all(getattr(plan, part) == getattr(changed, part) for part in parts)
 
 

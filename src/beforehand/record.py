@@ -55,9 +55,7 @@ from beforehand.version import __version__
 Labels = Callable[[str], str]
 
 
-def lock_of(
-    trail: Trail, alternatives: Mapping[str, Trail], *, file: str, labels: Labels = str
-) -> Lock:
+def lock_of(trail: Trail, alternatives: Mapping[str, Trail], *, file: str, labels: Labels = str) -> Lock:
     """The lock of a run and its declared alternatives.
 
     Parameters
@@ -170,7 +168,9 @@ def differences_from(
             found.append(f"The sign of {name} changes.")
         elif term.standard_error and abs(now - term.coefficient) > limit * term.standard_error:
             moved = abs(now - term.coefficient) / term.standard_error
-            found.append(f"{name} moves by {wording.number(moved)} standard errors, limit {wording.number(limit)}.")
+            found.append(
+                f"{name} moves by {wording.number(moved)} standard errors, limit {wording.number(limit)}."
+            )
     return tuple(found)
 
 

@@ -77,7 +77,11 @@ def _p_against(p: float, limit: float) -> str:
     side = "above" if p > limit else "not above"
     shown = p_value(p)
     if shown == "below 0.001":
-        return f"below 0.001 is not above {limit_text(limit)}" if p <= limit else f"{p:.3g} is above {limit_text(limit)}"
+        return (
+            f"below 0.001 is not above {limit_text(limit)}"
+            if p <= limit
+            else f"{p:.3g} is above {limit_text(limit)}"
+        )
     if float(shown) == round(limit, 3) and p != limit:
         shown = f"{p:.6g}"
     return f"{shown} is {side} {limit_text(limit)}"
@@ -194,9 +198,15 @@ def _final(what: str, good: str, bad: str) -> Mapping[str, Sentence]:
 
     return {
         f"{what}_passes": lambda r: f"{good.format(about=about(r))} ({numbers(r)}).",
-        f"{what}_not_checked": lambda r: f"{what.replace('_', ' ').capitalize()}{about(r)} is not checked: {r.because}.",
-        f"{what}_fails_report": lambda r: f"{bad.format(about=about(r))} ({numbers(r)}); the plan says to report it.",
-        f"{what}_fails_stop": lambda r: f"{bad.format(about=about(r))} ({numbers(r)}); the plan says to stop.",
+        f"{what}_not_checked": lambda r: (
+            f"{what.replace('_', ' ').capitalize()}{about(r)} is not checked: {r.because}."
+        ),
+        f"{what}_fails_report": lambda r: (
+            f"{bad.format(about=about(r))} ({numbers(r)}); the plan says to report it."
+        ),
+        f"{what}_fails_stop": lambda r: (
+            f"{bad.format(about=about(r))} ({numbers(r)}); the plan says to stop."
+        ),
         f"{what}_fails_robust_errors": lambda r: (
             f"{bad.format(about=about(r))} ({numbers(r)}); the plan calls for robust standard errors."
         ),
@@ -213,7 +223,9 @@ SENTENCES: Mapping[str, Sentence] = {
     "full_enough": lambda r: (
         f"{r.subject} stays: {share(r.evidence['share'])} missing is not above {share(r.limit)}."
     ),
-    "too_empty": lambda r: f"{r.subject} leaves: {share(r.evidence['share'])} missing is above {share(r.limit)}.",
+    "too_empty": lambda r: (
+        f"{r.subject} leaves: {share(r.evidence['share'])} missing is above {share(r.limit)}."
+    ),
     "kept_without_fill": lambda r: (
         f"The run stops: {r.subject} is kept by rule, {share(r.evidence['share'])} of it is missing, "
         "and the plan has no fill for it."
@@ -247,7 +259,9 @@ SENTENCES: Mapping[str, Sentence] = {
     "outcome_unmended": _say("{s} stays on its own scale although no rung passes."),
     # dependence
     "leaves_constant": lambda r: f"{r.subject} leaves: it is constant in the rows in use ({_dependence(r)}).",
-    "leaves_dependent": lambda r: f"{r.subject} leaves: it is determined by others exactly ({_dependence(r)}).",
+    "leaves_dependent": lambda r: (
+        f"{r.subject} leaves: it is determined by others exactly ({_dependence(r)})."
+    ),
     "stops_constant": lambda r: (
         f"The run stops: {r.subject} is constant in the rows in use and a rule keeps it ({_dependence(r)})."
     ),
@@ -340,19 +354,29 @@ SENTENCES: Mapping[str, Sentence] = {
     ),
     "full_model_stands": _say("The full model stands: the plan selects nothing."),
     "leaves_backward": _p_says("{s} leaves: {p}."),
-    "leaves_aic": lambda r: f"{r.subject} leaves: AIC falls by {number(-float(str(r.evidence['change_aic'])))}.",
-    "leaves_bic": lambda r: f"{r.subject} leaves: BIC falls by {number(-float(str(r.evidence['change_bic'])))}.",
+    "leaves_aic": lambda r: (
+        f"{r.subject} leaves: AIC falls by {number(-float(str(r.evidence['change_aic'])))}."
+    ),
+    "leaves_bic": lambda r: (
+        f"{r.subject} leaves: BIC falls by {number(-float(str(r.evidence['change_bic'])))}."
+    ),
     "not_in_best_subset": _say("{s} leaves: it is not in the best subset."),
-    "no_subset": _say("No lawful subset has only significant or kept predictors; {s} is one of those searched."),
+    "no_subset": _say(
+        "No lawful subset has only significant or kept predictors; {s} is one of those searched."
+    ),
     "stays": _p_says("{s} stays: {p}."),
     "stays_above_alpha": _p_says("{s} stays although {p}."),
     "mean_is_answer": _say("No predictor is left: the mean of {s} is the answer."),
     # final checks
     **_final("curvature", "The relation{about} is straight", "The relation{about} still bends"),
-    **_final("reset", "Powers of the fitted values add nothing", "Powers of the fitted values add to the fit"),
+    **_final(
+        "reset", "Powers of the fitted values add nothing", "Powers of the fitted values add to the fit"
+    ),
     **_final("spread", "The spread is even", "The spread is uneven"),
     **_final("normality", "The residuals look normal", "The residuals are not normal"),
-    **_final("independence", "The residuals are independent in order", "The residuals hang together in order"),
+    **_final(
+        "independence", "The residuals are independent in order", "The residuals hang together in order"
+    ),
     "robust_errors_used": lambda r: (
         "Robust standard errors (HC3) stand in the final table; "
         + (
@@ -436,7 +460,9 @@ def cautions(
     """What must be said beside an answer: what this run calls for first, then what always holds."""
     said: list[str] = []
     if cap_reached:
-        said.append("More rows change the answer than the plan allows to remove: the answer hangs on single rows.")
+        said.append(
+            "More rows change the answer than the plan allows to remove: the answer hangs on single rows."
+        )
     if exact:
         said.append("The model fits without residuals: see whether the outcome is computed from a predictor.")
     said += [f"{name} still bends: no rung of the ladder mends it." for name in unmended]

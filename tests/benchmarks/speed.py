@@ -200,9 +200,7 @@ def _run_time(plan: Any, table: Any, repeats: int) -> tuple[float, list[tuple[in
     return statistics.median(times), fits
 
 
-def _loop_time(
-    table: Any, fits: Sequence[tuple[int, int]], sampled: Sequence[int], repeats: int
-) -> float:
+def _loop_time(table: Any, fits: Sequence[tuple[int, int]], sampled: Sequence[int], repeats: int) -> float:
     """Seconds of the plain loop over the same fits."""
     import numpy as np
     import statsmodels.api as sm
@@ -261,7 +259,9 @@ def whole_process(repeats: int) -> list[Line]:
 
 def help_text(repeats: int) -> list[Line]:
     """The first thing that anyone asks for."""
-    ours, other = _process_times(["-m", "beforehand.cli", "--help"], ["-c", "import typer, pydantic"], repeats)
+    ours, other = _process_times(
+        ["-m", "beforehand.cli", "--help"], ["-c", "import typer, pydantic"], repeats
+    )
     return [
         Line(what="(e) --help / import typer, pydantic", ours=f"{ours:.2f} s", other=f"{other:.2f} s",
              ratio=ours / other, goal=2.5)

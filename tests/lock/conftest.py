@@ -102,7 +102,13 @@ def ruling(number: str, step: str, clause: str, subject: str, ground: str, **giv
         "says": f"{subject}: {ground}.",
     }
     return RulingRecord(
-        id=number, step=step, clause=clause, subject=subject, verdict=verdict_of(ground), ground=ground, **{**fields, **given}
+        id=number,
+        step=step,
+        clause=clause,
+        subject=subject,
+        verdict=verdict_of(ground),
+        ground=ground,
+        **{**fields, **given},
     )
 
 

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import pytest
-
 from tests_cases import ANSCOMBE, CEMENT, DELIVERY, LONGLEY, STACK_LOSS, rulings, run_on, terms
 
 BACKWARD = ["selection"]
@@ -19,8 +18,12 @@ def test_cement_backward_elimination_drops_x3_then_x4(alpha):
     assert left[1].evidence["p"] == pytest.approx(0.2053954, abs=5e-8)
     found = terms(done)
     assert list(found) == ["intercept", "x1", "x2"]
-    assert [t.coefficient for t in found.values()] == pytest.approx([52.57734888, 1.468305742, 0.6622504913], rel=1e-9)
-    assert [t.standard_error for t in found.values()] == pytest.approx([2.28617433, 0.121300924, 0.0458547215], rel=1e-8)
+    assert [t.coefficient for t in found.values()] == pytest.approx(
+        [52.57734888, 1.468305742, 0.6622504913], rel=1e-9
+    )
+    assert [t.standard_error for t in found.values()] == pytest.approx(
+        [2.28617433, 0.121300924, 0.0458547215], rel=1e-8
+    )
     assert done.lock.answer.r_squared == pytest.approx(0.9786783745, rel=1e-9)
     assert done.lock.answer.press == pytest.approx(93.88255, abs=5e-6)
     assert done.status == "adopted"
@@ -147,5 +150,7 @@ def test_delivery_without_row_9():
     """Without row 9 the delivery times give 4.447, 1.498, .0103 and MSE 5.905."""
     done = run_on(DELIVERY, "minutes", steps=["influence"], influence={"at_most": "1%"})
     assert len(done.lock.rows_removed) == 1
-    assert [t.coefficient for t in terms(done).values()] == pytest.approx([4.44723773, 1.49769128, 0.0103240587], rel=1e-8)
+    assert [t.coefficient for t in terms(done).values()] == pytest.approx(
+        [4.44723773, 1.49769128, 0.0103240587], rel=1e-8
+    )
     assert done.lock.answer.residual_sd**2 == pytest.approx(5.9048761, rel=1e-8)

@@ -1,4 +1,4 @@
-"""Assumption checks on a fit: is the relation straight, is the spread even, do residuals hang together?
+"""Assumption checks on a fit: a straight relation, an even spread, independent residuals.
 
 Each is an auxiliary regression on the exact moments of the fit, extended by the columns that the
 check makes itself. What cannot be checked says why.
@@ -15,13 +15,15 @@ from numpy.typing import NDArray
 from scipy.special import chdtrc, fdtrc
 
 from beforehand.fit.columns import FloatArray, Key, Source
+from beforehand.fit.dependence import independent_of
 from beforehand.fit.descriptives import shape_of
 from beforehand.fit.moments import Moments
 from beforehand.fit.normality import EXACT_FIT, jarque_bera, shapiro_wilk
 from beforehand.fit.overlay import Overlay, made
 from beforehand.fit.results import Check
 from beforehand.fit.sums import exact_sum
-from beforehand.fit.tableau import RankDeficient, Tableau, added_column_test, independent_of, tableau_of
+from beforehand.fit.sweeping import RankDeficient
+from beforehand.fit.tableau import Tableau, added_column_test, tableau_of
 
 __all__ = [
     "breusch_godfrey",
@@ -41,7 +43,7 @@ SQUARED_RESIDUAL = made("squared residual")
 
 
 def curvature(tableau: Tableau, square: Key, moments: Moments) -> Check:
-    """t test of a predictor's added square.
+    """Whether a predictor's square adds to the model.
 
     Parameters
     ----------
@@ -52,6 +54,11 @@ def curvature(tableau: Tableau, square: Key, moments: Moments) -> Check:
         model with an intercept.
     moments : Moments
         Of the same rows, with the square.
+
+    Returns
+    -------
+    Check
+        t of the added square on the residual degrees of freedom less one.
     """
     if tableau.exact:
         return _not_made("curvature", EXACT_FIT)
@@ -65,6 +72,15 @@ def curvature(tableau: Tableau, square: Key, moments: Moments) -> Check:
 def breusch_pagan(source: Source, tableau: Tableau, keys: Sequence[Key], residual: FloatArray) -> Check:
     """Whether squared residuals go with the given columns.
 
+    Parameters
+    ----------
+    source : Source
+        The rows of the fit.
+    tableau : Tableau
+    keys : sequence of Key
+        Columns that the spread may go with, of the table or of the model.
+    residual : FloatArray, shape (n,)
+
     Returns
     -------
     Check
@@ -77,6 +93,15 @@ def breusch_pagan(source: Source, tableau: Tableau, keys: Sequence[Key], residua
 
 def white(source: Source, tableau: Tableau, keys: Sequence[Key], residual: FloatArray) -> Check:
     """Whether squared residuals go with the columns, their squares and cross-products.
+
+    Parameters
+    ----------
+    source : Source
+        The rows of the fit; it must supply products of the columns.
+    tableau : Tableau
+    keys : sequence of Key
+        Columns of the model.
+    residual : FloatArray, shape (n,)
 
     Returns
     -------
@@ -96,7 +121,7 @@ def white(source: Source, tableau: Tableau, keys: Sequence[Key], residual: Float
 def _spread(
     name: str, source: Source, tableau: Tableau, keys: tuple[Key, ...], residual: FloatArray
 ) -> Check:
-    """n R² of the squared residuals on columns and a constant."""
+    """Fit squared residuals on columns and a constant: n R²."""
     if tableau.exact:
         return _not_made(name, EXACT_FIT)
     # Scaled to a size of one, so that the squares neither overflow nor vanish.
@@ -120,6 +145,13 @@ def reset(source: Source, tableau: Tableau, fitted: FloatArray) -> Check:
     The fitted values are centred and scaled first: raw powers of values far from 0 are collinear
     and reject correct models.
 
+    Parameters
+    ----------
+    source : Source
+        The rows of the fit.
+    tableau : Tableau
+    fitted : FloatArray, shape (n,)
+
     Returns
     -------
     Check
@@ -138,7 +170,9 @@ def reset(source: Source, tableau: Tableau, fitted: FloatArray) -> Check:
     if df < 1:
         return _not_made("reset", f"it needs {tableau.p + 3} rows and there are {tableau.n}")
     try:
-        wide = tableau_of(moments, tableau.outcome, (*tableau.keys, square, cube), intercept=tableau.intercept)
+        wide = tableau_of(
+            moments, tableau.outcome, (*tableau.keys, square, cube), intercept=tableau.intercept
+        )
     except RankDeficient:
         return _not_made("reset", "powers of the fitted values are combinations of the columns in the model")
     if wide.rss == 0:
@@ -154,6 +188,8 @@ def durbin_watson(residual: FloatArray, order: NDArray[np.float64], *, exact: bo
     ----------
     residual, order : arrays of shape (n,)
         ``order`` ranks the rows; equal ranks keep the canonical order.
+    exact : bool
+        The fit is exact, so that there is nothing to look at.
 
     Returns
     -------
@@ -176,6 +212,10 @@ def breusch_godfrey(
 
     Parameters
     ----------
+    source : Source
+        The rows of the fit.
+    tableau : Tableau
+    residual : FloatArray, shape (n,)
     order : array of shape (n,)
         Rank of each row; equal ranks keep the canonical order.
     lags : int

@@ -9,8 +9,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from beforehand.fit.columns import FloatArray, Key
+from beforehand.fit.inverses import triangle_of, unit_inverse, unit_inverses_without
 from beforehand.fit.moments import Moments
-from beforehand.fit.tableau import triangle_of, unit_inverse
 
 # Columns are orthogonal when their cosine is below this: a few units in the last place.
 ORTHOGONAL = 2.0**-50
@@ -65,11 +65,7 @@ def inflation_of(
     for name, block in blocks.items():
         places = slice(start, start + len(block))
         start += len(block)
-        if len(block) == 1:
-            found[name] = float(inverse[places, places][0, 0])
-        else:
-            generalized = _determinant(inverse[places, places]) * _determinant(unit[places, places])
-            found[name] = float(generalized ** (1.0 / len(block)))
+        found[name] = _inflation(inverse[places, places], unit[places, places])
     return found
 
 
@@ -78,35 +74,63 @@ def inflation_without(
 ) -> dict[str, float]:
     """Variance inflation of one predictor after each other predictor in turn has been left out.
 
-    Computed from one inverse: leaving columns out of the model takes their part out of the inverse.
+    Parameters
+    ----------
+    moments : Moments
+    blocks : mapping of predictor to its columns
+        Together free of exact dependence.
+    name : str
+        The predictor in question.
+    intercept : bool
+
+    Returns
+    -------
+    dict
+        By the predictor that was left out, in the order of ``blocks``; measured as in
+        `inflation_of`.
     """
-    keys = [key for block in blocks.values() for key in block]
-    inverse = unit_inverse(moments, keys, centred=intercept)
-    unit = moments.cross(keys, centred=intercept)
-    own = [keys.index(key) for key in blocks[name]]
-    found: dict[str, float] = {}
-    for other, block in blocks.items():
-        if other == name:
-            continue
-        gone = [keys.index(key) for key in block]
-        left = _left_out(inverse, own, gone)
-        generalized = _determinant(left) * _determinant(unit[np.ix_(own, own)])
-        found[other] = float(left[0, 0]) if len(own) == 1 else float(generalized ** (1.0 / len(own)))
-    return found
+    own = blocks[name]
+    others = {other: block for other, block in blocks.items() if other != name}
+    inverses = unit_inverses_without(moments, own, tuple(others.values()), centred=intercept)
+    unit = moments.cross(own, centred=intercept)
+    return {other: _inflation(inverse, unit) for other, inverse in zip(others, inverses, strict=True)}
 
 
-def _left_out(inverse: FloatArray, own: list[int], gone: list[int]) -> FloatArray:
-    """The part ``own`` of an inverse after the columns ``gone`` have left, by elimination."""
-    rest = inverse[np.ix_(gone + own, gone + own)].copy()
-    for k in range(len(gone)):
-        rest[k + 1 :] = rest[k + 1 :] - (rest[k + 1 :, k] / rest[k, k])[:, None] * rest[k]
-    return rest[len(gone) :, len(gone) :]
+def _inflation(inverse: FloatArray, unit: FloatArray) -> float:
+    """VIF of one column, or the generalized one of a block to the power 1/df.
+
+    ``inverse`` is the block's part of the inverse, ``unit`` its own cross-products, both scaled to a
+    unit diagonal of the cross-products; shapes (df, df).
+    """
+    if not len(unit):
+        # A category with one level in these rows has no column that could be inflated.
+        return 1.0
+    if len(unit) == 1:
+        return float(inverse[0, 0])
+    return float((_determinant(inverse) * _determinant(unit)) ** (1.0 / len(unit)))
 
 
 def condition(moments: Moments, keys: Sequence[Key], *, intercept: bool) -> Condition:
     """Condition indices and variance shares (Belsley, Kuh & Welsch 1980, ch. 3).
 
     Columns, the intercept among them, are scaled to unit length and not centred.
+
+    Parameters
+    ----------
+    moments : Moments
+    keys : sequence of Key
+        Columns of the model, free of exact dependence.
+    intercept : bool
+        Whether the intercept is one of the columns; it stands first.
+
+    Returns
+    -------
+    Condition
+
+    Raises
+    ------
+    RankDeficient
+        When a column is an exact combination of the ones before it.
     """
     triangle = triangle_of(moments, keys, intercept=intercept)
     values, vectors = _singular(triangle)
@@ -116,9 +140,7 @@ def condition(moments: Moments, keys: Sequence[Key], *, intercept: bool) -> Cond
     totals = np.array([math.fsum(row) for row in parts.tolist()])
     shares = (parts / totals[:, None]).T
     names: tuple[Key | None, ...] = (None, *keys) if intercept else tuple(keys)
-    return Condition(
-        keys=names, indices=tuple(float(values[0] / value) for value in values), shares=shares
-    )
+    return Condition(keys=names, indices=tuple(float(values[0] / value) for value in values), shares=shares)
 
 
 def _determinant(matrix: FloatArray) -> float:
@@ -168,11 +190,12 @@ def _singular(triangle: FloatArray) -> tuple[FloatArray, FloatArray]:
 def _rounds(k: int) -> list[tuple[list[int], list[int]]]:
     """Rounds of disjoint pairs that meet every pair of ``k`` columns once (a round robin)."""
     places: list[int] = list(range(k + k % 2))
+    half = len(places) // 2
     rounds: list[tuple[list[int], list[int]]] = []
     for _ in range(len(places) - 1):
         pairs = [
             (min(one, other), max(one, other))
-            for one, other in zip(places[: len(places) // 2], reversed(places[len(places) // 2 :]), strict=True)
+            for one, other in zip(places[:half], reversed(places[half:]), strict=True)
             if one < k and other < k
         ]
         rounds.append(([one for one, _ in pairs], [other for _, other in pairs]))

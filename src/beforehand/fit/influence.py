@@ -74,9 +74,7 @@ class WithoutEach:
     estimates: FloatArray
 
 
-def influence(
-    source: Source, tableau: Tableau, values: RowValues, *, dfbetas: bool = False
-) -> Influence:
+def influence(source: Source, tableau: Tableau, values: RowValues, *, dfbetas: bool = False) -> Influence:
     """Influence measures of every row.
 
     Parameters
@@ -84,11 +82,17 @@ def influence(
     source : Source
         The rows of the fit.
     tableau : Tableau
+        Not an exact fit.
     values : RowValues
     dfbetas : bool
         Whether to compute DFBETAS, the one measure that needs every coefficient of every row.
+
+    Returns
+    -------
+    Influence
+        With one residual degree of freedom the measures that leave the row out are NaN.
     """
-    n, p, df = tableau.n, tableau.p, tableau.df
+    p, df = tableau.p, tableau.df
     h, e = values.leverage, values.residual
     sole = h >= 1.0
     s2 = float(tableau.rss) / df
@@ -111,23 +115,17 @@ def influence(
 def _pulls(source: Source, tableau: Tableau) -> FloatArray:
     """``(X'X)⁻¹ x`` of each row, over the root of its diagonal: shape (n_rows, k), slopes only."""
     weights, constants = tableau.pulls()
-    forms = forms_of(
-        tableau.keys, tableau.tops(tableau.keys), weights, constants, lowest_bit=-CHANGE_BITS
-    )
+    forms = forms_of(tableau.keys, tableau.tops(tableau.keys), weights, constants, lowest_bit=-CHANGE_BITS)
     out = np.empty((source.n_rows, len(tableau.keys)))
     for start, stop, block in evaluated(source, forms):
         out[start:stop] = block
     return out
 
 
-def _largest_dfbetas(
-    source: Source, tableau: Tableau, values: RowValues, without: FloatArray
-) -> FloatArray:
+def _largest_dfbetas(source: Source, tableau: Tableau, values: RowValues, without: FloatArray) -> FloatArray:
     """Largest |DFBETAS| of each row over the slopes; in blocks, so that no (n, k) array is made."""
     weights, constants = tableau.pulls()
-    forms = forms_of(
-        tableau.keys, tableau.tops(tableau.keys), weights, constants, lowest_bit=-CHANGE_BITS
-    )
+    forms = forms_of(tableau.keys, tableau.tops(tableau.keys), weights, constants, lowest_bit=-CHANGE_BITS)
     out = np.zeros(source.n_rows)
     for start, stop, block in evaluated(source, forms):
         with np.errstate(divide="ignore", invalid="ignore"):
@@ -156,6 +154,10 @@ def without_each(
     residual, leverage, outcome : FloatArray, shape (m,)
         Of the same rows.
     blocks : mapping of predictor to its columns
+
+    Returns
+    -------
+    WithoutEach
     """
     k, df = len(tableau.keys), tableau.df
     rest = 1.0 - leverage
@@ -205,7 +207,7 @@ def _p_without(
     estimates: FloatArray,
     s2: FloatArray,
 ) -> FloatArray:
-    """p of one predictor without each row: t for one column, partial F for a block."""
+    """The p of one predictor without each row: t for one column, partial F for a block."""
     places = [tableau.keys.index(key) for key in keys]
     df = tableau.df - 1
     with np.errstate(divide="ignore", invalid="ignore"):
@@ -218,5 +220,21 @@ def _p_without(
         unit = tableau.unit_inverse_of(places)
         inverse = unit[None, :, :] + block[:, :, None] * block[:, None, :] / rest[:, None, None]
         scaled = estimates[:, places] / root[places]
-        gain = (scaled * np.linalg.solve(inverse, scaled[:, :, None])[:, :, 0]).sum(axis=1)
+        gain = _quadratic(inverse, scaled)
         return np.asarray(fdtrc(len(places), df, gain / len(places) / s2))
+
+
+def _quadratic(matrices: FloatArray, vectors: FloatArray) -> FloatArray:
+    """``v' M⁻¹ v`` of each row; shapes (m, q, q) and (m, q), M positive definite.
+
+    By elimination in a fixed order, as a library's solver differs in the last digits by machine.
+    """
+    rest, left = matrices.copy(), vectors.copy()
+    total = np.zeros(len(vectors))
+    for k in range(vectors.shape[1]):
+        pivot = rest[:, k, k].copy()
+        total += left[:, k] * left[:, k] / pivot
+        share = rest[:, k + 1 :, k] / pivot[:, None]
+        left[:, k + 1 :] -= share * left[:, k, None]
+        rest[:, k + 1 :] -= share[:, :, None] * rest[:, k, None, :]
+    return total

@@ -75,6 +75,10 @@ def forms_of(
     lowest_bit : int, optional
         Exponent of the last bit that a result needs; by default as many bits as a double has below
         the largest term, and as many again.
+
+    Returns
+    -------
+    Forms
     """
     q = len(constants)
     scale = np.zeros(q, dtype=np.int64)
@@ -97,7 +101,19 @@ def forms_of(
 
 
 def evaluated(source: Source, forms: Forms) -> Iterator[tuple[int, int, FloatArray]]:
-    """Values of the forms, block by block: start, stop, and an array of shape (stop - start, q)."""
+    """Values of the forms, block by block.
+
+    Parameters
+    ----------
+    source : Source
+        No column may be larger than the ``tops`` with which the forms were prepared.
+    forms : Forms
+
+    Yields
+    ------
+    tuple of int, int and FloatArray
+        Start and stop of the block, and values of shape (stop - start, q).
+    """
     q = max(1, len(forms.scale))
     rows = max(256, min(8192, BLOCK_CELLS // max(q, len(forms.keys) or 1)))
     for start in range(0, source.n_rows, rows):

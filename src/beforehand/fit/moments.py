@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import Any
@@ -12,7 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from beforehand.fit.columns import Factor, FloatArray, Key, Source
-from beforehand.fit.slices import BITS, BLOCK_ROWS, exponents_of, sliced
+from beforehand.fit.slices import BITS, BLOCK_ROWS, ZERO_EXPONENT, exponents_of, sliced
 
 Integers = NDArray[Any]  # of Python integers
 
@@ -27,7 +27,12 @@ def named(name: str) -> Key:
 
 @dataclass(frozen=True, slots=True)
 class ArraySource:
-    """Columns that are plain arrays, all of the same length."""
+    """Columns that are plain arrays, all of the same length.
+
+    Attributes
+    ----------
+    columns : mapping of Key to FloatArray, each of shape (n,)
+    """
 
     columns: Mapping[Key, FloatArray]
 
@@ -56,6 +61,8 @@ class Moments:
         Column ``k`` is below ``2**tops[k]`` in size.
     sums : integers, shape (k,)
     products : integers, shape (k, k)
+    places : mapping of Key to int
+        Place of each column.
     """
 
     keys: tuple[Key, ...]
@@ -71,14 +78,28 @@ class Moments:
         return key in self.places
 
     def extended(self, source: Source, keys: Sequence[Key]) -> Moments:
-        """These moments and those of more columns, in one pass over the rows."""
+        """These moments and those of more columns, in one pass over the rows.
+
+        Parameters
+        ----------
+        source : Source
+            The same rows; it supplies the columns held already too.
+        keys : sequence of Key
+            Those held already are passed over.
+        """
         new = tuple(key for key in dict.fromkeys(keys) if key not in self.places)
         if not new:
             return self
         return _extended(self, source, new)
 
     def without(self, rows: FloatArray) -> Moments:
-        """The moments less some rows; ``rows`` has shape (m, k) in the order of ``keys``."""
+        """The moments less some rows.
+
+        Parameters
+        ----------
+        rows : FloatArray, shape (m, k)
+            Values of rows that are in these moments, columns in the order of ``keys``.
+        """
         counted = _counted(rows, self.units)
         sums, products = self.sums.copy(), self.products.copy()
         for row in counted:
@@ -105,7 +126,7 @@ class Moments:
         return float(Fraction(int(self.sums[k]), self.n) * Fraction(2) ** self.units[k])
 
     def sd(self, key: Key) -> float:
-        """Standard deviation with divisor n - 1."""
+        """Standard deviation with divisor n - 1, to the last digit; it needs two rows."""
         k = self.places[key]
         about = self.n * int(self.products[k, k]) - int(self.sums[k]) ** 2
         variance = Fraction(about, self.n * (self.n - 1)) * Fraction(4) ** self.units[k]
@@ -113,9 +134,7 @@ class Moments:
 
     def correlation(self, a: Key, b: Key) -> float:
         """Pearson's correlation; 0 for a constant column."""
-        i, j = self.places[a], self.places[b]
         about = self.about((a, b), centred=True)
-        del i, j
         scale = math.isqrt((int(about[0, 0]) * int(about[1, 1])) << (2 * FRACTION_BITS))
         if scale == 0:
             return 0.0
@@ -159,7 +178,20 @@ class Moments:
 
 
 def moments_of(source: Source, keys: Sequence[Key]) -> Moments:
-    """Exact moments of columns over all rows of a source."""
+    """Exact moments of columns over all rows of a source.
+
+    Parameters
+    ----------
+    source : Source
+        Finite values.
+    keys : sequence of Key
+        Repeated ones are held once.
+
+    Returns
+    -------
+    Moments
+        The same integers whatever the order of the rows, the blocks, the BLAS or its threads.
+    """
     empty = Moments((), source.n_rows, (), (), np.empty(0, object), np.empty((0, 0), object), {})
     return _extended(empty, source, tuple(dict.fromkeys(keys)))
 
@@ -186,7 +218,8 @@ def _counted(rows: FloatArray, units: Sequence[int]) -> Integers:
     return out
 
 
-def _blocks(source: Source, keys: Sequence[Key]) -> Any:
+def _blocks(source: Source, keys: Sequence[Key]) -> Iterator[FloatArray]:
+    """Values of all columns, block by block: shape (rows, len(keys))."""
     for start in range(0, source.n_rows, BLOCK_ROWS):
         stop = min(start + BLOCK_ROWS, source.n_rows)
         block = np.empty((stop - start, len(keys)), order="F")
@@ -200,11 +233,12 @@ _FLUSH = 512
 
 
 def _extended(old: Moments, source: Source, new: tuple[Key, ...]) -> Moments:
+    """Moments with more columns: one pass to find their size, one to add up products of slices."""
     keys = (*old.keys, *new)
-    top = np.full(len(keys), -5000)
+    top = np.full(len(keys), ZERO_EXPONENT, dtype=np.int64)
     for block in _blocks(source, keys):
         top = np.maximum(top, exponents_of(block))
-    top = np.where(top < -4000, 0, top)
+    top = np.where(top == ZERO_EXPONENT, 0, top)
     count, k, m = len(old.keys), len(keys), len(new)
     totals: dict[tuple[int, int], Any] = {}
     sums: dict[int, Any] = {}

@@ -22,7 +22,7 @@ from beforehand.fit.tableau import Tableau
 PULL_BITS = 60
 
 
-class NotEstimable(NumericalError):
+class NotEstimable(NumericalError):  # noqa: N818 - named by what is so
     """These standard errors do not exist for this fit."""
 
     code = "not_estimable"
@@ -45,9 +45,11 @@ def robust_fit(
     Parameters
     ----------
     fit : Fit
-        The classical one.
+        The classical one; not an exact one, whose residuals are rounding.
     source, tableau, values
         Rows, swept model and row values of the same fit.
+    blocks : mapping of predictor to its columns
+        As in the classical fit.
     errors : str
         ``hc0`` (White 1980), ``hc1``, ``hc2``, ``hc3`` (MacKinnon & White 1985, in the form of
         Davidson & MacKinnon 1993), ``cluster`` (Liang & Zeger 1986, with the factor
@@ -80,7 +82,10 @@ def robust_fit(
         if count < 2:
             raise NotEstimable("there is one cluster only")
         scores = np.column_stack(
-            [sums_by_group(pulls[:, j] * residual, codes.astype(np.intp), count) for j in range(pulls.shape[1])]
+            [
+                sums_by_group(pulls[:, j] * residual, codes.astype(np.intp), count)
+                for j in range(pulls.shape[1])
+            ]
         )
         factor = count / (count - 1) * (fit.n - 1) / fit.df_residual
         df = count - 1
@@ -156,16 +161,16 @@ def _with_covariance(
     errors: str,
 ) -> Fit:
     """The fit with this covariance and all that follows from it."""
-    coefficients = tuple(
-        _coefficient(c, float(covariance[j, j]), df) for j, c in enumerate(fit.coefficients)
-    )
+    coefficients = tuple(_coefficient(c, float(covariance[j, j]), df) for j, c in enumerate(fit.coefficients))
     estimates = np.array([c.estimate for c in fit.coefficients])
     place = {c.key: j for j, c in enumerate(fit.coefficients)}
     tests: dict[str, TermTest] = {}
     for name, keys in blocks.items():
         places = [place[key] for key in keys]
         old = fit.tests[name]
-        if len(places) == 1:
+        if not places:
+            tests[name] = old
+        elif len(places) == 1:
             own = coefficients[places[0]]
             statistic = None if own.t is None else abs(own.t)
             tests[name] = replace(old, statistic=statistic, p=own.p)

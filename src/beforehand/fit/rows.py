@@ -48,6 +48,11 @@ def row_values(source: Source, tableau: Tableau) -> RowValues:
         The rows of the fit.
     tableau : Tableau
         Swept model on the same rows.
+
+    Returns
+    -------
+    RowValues
+        Its arrays do not depend on the order of rows, nor on blocks or threads.
     """
     n = source.n_rows
     outcome = np.concatenate(

@@ -12,34 +12,51 @@ from scipy.special import fdtrc, stdtr
 
 from beforehand.faults import NumericalError
 from beforehand.fit.columns import FloatArray, Key
+from beforehand.fit.dependence import Dependence, dependence
 from beforehand.fit.moments import Integers, Moments
 from beforehand.fit.results import Coefficient, Fit, TermTest
+from beforehand.fit.sweeping import (
+    BITS,
+    ONE,
+    RankDeficient,
+    fixed,
+    fixed_of,
+    mean_of,
+    power,
+    scaled,
+    square_root,
+    start,
+    swept,
+    vanishes,
+)
 
-# Fixed-point fraction: 77 decimal digits, of which a condition number of 1e10 costs twenty.
-BITS = 256
-ONE = 1 << BITS
-
-# A column whose part that is not explained by the ones before is smaller than this share of its own
-# length is an exact combination of them: rounding of doubles leaves about 1e-16, honest data more.
-DEPENDENCE_TOLERANCE = 1e-13
+__all__ = [
+    "Dependence",
+    "RankDeficient",
+    "Tableau",
+    "Unrepresentable",
+    "added_column_test",
+    "dependence",
+    "fit_of",
+    "tableau_of",
+]
 
 # Residuals smaller than this share of the outcome's spread are rounding of the table.
 EXACT_FIT_TOLERANCE = 1e-13
 
+# A residual sum of squares below this, of an outcome of size 1e-150, has lost digits to underflow.
+SMALLEST_RSS = 1e-300
 
-class RankDeficient(NumericalError):
-    """A column is an exact combination of the others."""
+# The smallest double with all its digits.
+SMALLEST_ERROR = 2.0**-1022
 
-    code = "rank_deficient"
+_BEYOND = "a number of this fit is too large or too small for a double; other units of the columns help"
 
 
-@dataclass(frozen=True, slots=True)
-class Dependence:
-    """A column that is an exact combination of earlier ones; None stands for the intercept."""
+class Unrepresentable(NumericalError):  # noqa: N818 - named by what is so, as its neighbours are
+    """A number of the fit is beyond the doubles."""
 
-    key: Key
-    weights: tuple[tuple[Key | None, float], ...]
-    relative_pivot: float
+    code = "unrepresentable"
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -48,6 +65,19 @@ class Tableau:
 
     The last row and column are the outcome's. Cross-products about the mean (or 0) are
     ``matrix[i, j] * 2**(shifts[i] + shifts[j]) / n``, as fixed-point numbers of ``BITS`` bits.
+
+    Attributes
+    ----------
+    moments : Moments
+    outcome : Key
+    keys : tuple of Key, length k
+        Columns that are swept in, without the intercept.
+    intercept : bool
+    shifts : tuple of int, length k + 1
+        Scale of each column, the outcome's last.
+    matrix : integers, shape (k + 1, k + 1)
+    total : int
+        The outcome's own entry before the first sweep.
     """
 
     moments: Moments
@@ -84,7 +114,7 @@ class Tableau:
         return self._squares(self.total)
 
     def _squares(self, value: int) -> Fraction:
-        return _scaled(max(value, 0), 2 * self.shifts[-1]) / self.n
+        return scaled(max(value, 0), 2 * self.shifts[-1]) / self.n
 
     @property
     def exact(self) -> bool:
@@ -95,7 +125,7 @@ class Tableau:
 
     def slope(self, place: int) -> Fraction:
         """A coefficient."""
-        return _scaled(int(self.matrix[place, -1]), self.shifts[-1] - self.shifts[place])
+        return scaled(int(self.matrix[place, -1]), self.shifts[-1] - self.shifts[place])
 
     @property
     def estimates(self) -> tuple[float, ...]:
@@ -109,11 +139,10 @@ class Tableau:
             return Fraction(0)
         slopes = self.matrix[: len(self.keys), -1].tolist()
         carried = sum(slope * mean for slope, mean in zip(slopes, self._scaled_means(), strict=True))
-        return self._mean(self.outcome) - _power(Fraction(carried, ONE * ONE), self.shifts[-1])
+        return self._mean(self.outcome) - power(Fraction(carried, ONE * ONE), self.shifts[-1])
 
     def _mean(self, key: Key) -> Fraction:
-        place = self.moments.places[key]
-        return _power(Fraction(int(self.moments.sums[place]), self.n), self.moments.units[place])
+        return mean_of(self.moments, key)
 
     @property
     def outcome_mean(self) -> Fraction:
@@ -132,12 +161,15 @@ class Tableau:
         """Roots of the diagonal of the inverse cross-products, one for each slope."""
         return tuple(self._root(k) for k in range(len(self.keys)))
 
+    def inverse_diagonal(self, place: int) -> Fraction:
+        """A slope's entry on the diagonal of the inverse cross-products."""
+        return scaled(self._inverse_entry(place, place), -2 * self.shifts[place]) * self.n
+
     def _root(self, k: int) -> Fraction:
-        value = _scaled(self._inverse_entry(k, k), -2 * self.shifts[k]) * self.n
-        return Fraction(_sqrt(value))
+        return Fraction(square_root(self.inverse_diagonal(k)))
 
     def unit_inverse_of(self, places: Sequence[int]) -> FloatArray:
-        """The inverse cross-products of some slopes scaled to a unit diagonal."""
+        """Part of the inverse cross-products, scaled to a unit diagonal of the inverse."""
         out = np.empty((len(places), len(places)))
         for i, one in enumerate(places):
             for j, other in enumerate(places):
@@ -148,13 +180,21 @@ class Tableau:
     def pulls(self, *, with_constant: bool = False) -> tuple[list[list[Fraction]], list[Fraction]]:
         """Weights and constants of the forms ``((X'X)⁻¹ x)_j / root_j``, one for each slope.
 
-        With ``with_constant`` the form of the intercept comes first.
+        Parameters
+        ----------
+        with_constant : bool
+            Put the form of the intercept first.
+
+        Returns
+        -------
+        weights : rows of Fraction, one for each column
+        constants : list of Fraction, one for each form
         """
         k = len(self.keys)
         roots = self.inverse_roots()
         means = [self._mean(key) for key in self.keys] if self.intercept else [Fraction(0)] * k
         inverse = [
-            [_scaled(self._inverse_entry(i, j), -self.shifts[i] - self.shifts[j]) * self.n for j in range(k)]
+            [scaled(self._inverse_entry(i, j), -self.shifts[i] - self.shifts[j]) * self.n for j in range(k)]
             for i in range(k)
         ]
         weights = [[inverse[i][j] / roots[j] for j in range(k)] for i in range(k)]
@@ -172,9 +212,7 @@ class Tableau:
 
     def _scaled_means(self) -> list[int]:
         """Means of the columns in fixed point, in the tableau's scale."""
-        return [
-            _fixed_of(self._mean(key), -shift) for key, shift in zip(self.keys, self.shifts, strict=False)
-        ]
+        return [fixed_of(self._mean(key), -shift) for key, shift in zip(self.keys, self.shifts, strict=False)]
 
     def constant_root(self) -> Fraction:
         """Root of the intercept's entry in the inverse cross-products."""
@@ -184,7 +222,7 @@ class Tableau:
         if k:
             line = np.array(means, object)
             spread = -int((line * ((self.matrix[:k, :k] * line[None, :]).sum(axis=1) >> BITS)).sum() >> BITS)
-        return Fraction(_sqrt(Fraction(spread * self.n + ONE // self.n, ONE)))
+        return Fraction(square_root(Fraction(spread * self.n + ONE // self.n, ONE)))
 
     def whitening(self) -> tuple[list[list[Fraction]], list[Fraction]]:
         """Weights and constants of forms that make the columns orthonormal.
@@ -195,20 +233,20 @@ class Tableau:
         lower = _cholesky([[self._inverse_entry(i, j) for j in range(k)] for i in range(k)])
         half = math.isqrt(self.n << (2 * BITS))
         weights = [
-            [_power(Fraction(lower[i][j] * half, 1 << (2 * BITS)), -self.shifts[i]) for j in range(k)]
+            [power(Fraction(lower[i][j] * half, 1 << (2 * BITS)), -self.shifts[i]) for j in range(k)]
             for i in range(k)
         ]
         means = [self._mean(key) for key in self.keys] if self.intercept else [Fraction(0)] * k
         return weights, _centred(weights, means)
 
     def leverage_of(self, values: Sequence[Fraction]) -> Fraction:
-        """Leverage of a row with these values of the columns."""
+        """Leverage of a row, of this table or another, with these values of the columns."""
         k = len(self.keys)
         about = [
             value - (self._mean(key) if self.intercept else 0)
             for value, key in zip(values, self.keys, strict=True)
         ]
-        scaled = [_power(value, -self.shifts[j]) for j, value in enumerate(about)]
+        scaled = [power(value, -self.shifts[j]) for j, value in enumerate(about)]
         total = sum(
             (scaled[i] * scaled[j] * self._inverse_entry(i, j) for i in range(k) for j in range(k)),
             Fraction(0),
@@ -216,11 +254,11 @@ class Tableau:
         return total * self.n / ONE + (Fraction(1, self.n) if self.intercept else 0)
 
     def without(self, keys: Sequence[Key]) -> Tableau:
-        """The model less some columns."""
+        """The model less some of its columns, swept out in the order given."""
         matrix = self.matrix
         gone = [self.keys.index(key) for key in keys]
         for place in gone:
-            matrix = _swept(matrix, place, out=True)
+            matrix = swept(matrix, place, out=True)
         stay = [k for k in range(len(self.keys) + 1) if k not in gone]
         return Tableau(
             self.moments, self.outcome, tuple(self.keys[k] for k in stay[:-1]), self.intercept,
@@ -233,120 +271,25 @@ class Tableau:
         inner = self.matrix[np.ix_(places, places)]
         before = int(inner[-1, -1])
         for place in range(len(keys)):
-            inner = _swept(inner, place, out=True)
+            inner = swept(inner, place, out=True)
         return int(inner[-1, -1]) - before
-
-
-def _centred(weights: Sequence[Sequence[Fraction]], means: Sequence[Fraction]) -> list[Fraction]:
-    """Constants that put forms about the means."""
-    return [
-        -sum((row[form] * mean for row, mean in zip(weights, means, strict=True)), Fraction(0))
-        for form in range(len(means))
-    ]
-
-
-def _cholesky(matrix: list[list[int]]) -> list[list[int]]:
-    """Lower triangle L with L L' the matrix, all in fixed point."""
-    k = len(matrix)
-    lower = [[0] * k for _ in range(k)]
-    for j in range(k):
-        own = (matrix[j][j] << BITS) - sum(lower[j][m] ** 2 for m in range(j))
-        lower[j][j] = math.isqrt(max(own, 1))
-        for i in range(j + 1, k):
-            rest = (matrix[i][j] << BITS) - sum(lower[i][m] * lower[j][m] for m in range(j))
-            lower[i][j] = rest // lower[j][j]
-    return lower
-
-
-def _scaled(value: int, shift: int) -> Fraction:
-    """A fixed-point number times ``2**shift``."""
-    return _power(Fraction(value), shift - BITS)
-
-
-def _fixed_of(value: Fraction, shift: int) -> int:
-    """``value * 2**shift`` in fixed point."""
-    up = BITS + shift
-    if up >= 0:
-        return (value.numerator << up) // value.denominator
-    return value.numerator // (value.denominator << -up)
-
-
-def _power(value: Fraction, shift: int) -> Fraction:
-    return value * (1 << shift) if shift >= 0 else value / (1 << -shift)
-
-
-def _swept(matrix: Integers, k: int, *, out: bool = False) -> Integers:
-    """Sweep column ``k`` in or out; the inverse stands negated (Goodnight 1979)."""
-    pivot = int(matrix[k, k])
-    column = matrix[:, k].copy()
-    row = (column * ONE) // pivot
-    swept = matrix - ((column[:, None] * row[None, :]) >> BITS)
-    line = -row if out else row
-    swept[k, :] = line
-    swept[:, k] = line
-    swept[k, k] = -((ONE << BITS) // pivot)
-    return swept
-
-
-def _start(moments: Moments, keys: Sequence[Key], intercept: bool) -> tuple[Integers, tuple[int, ...], list[int]]:
-    """The unswept matrix, its shifts, and the raw length of each column in the matrix's units."""
-    about = moments.about(keys, centred=intercept)
-    raw = moments.about(keys, centred=False)
-    half = [(int(about[i, i]).bit_length() + 1) // 2 for i in range(len(keys))]
-    # (about << 2 wide) >> (half_i + half_j) without a negative shift, then down to BITS.
-    wide = max(2 * BITS, *half) if half else 2 * BITS
-    up = np.array([1 << (wide - h) for h in half], object)
-    matrix = ((about * up[:, None]) * up[None, :]) >> (2 * wide - BITS)
-    shifts = tuple(h + moments.units[p] for h, p in zip(half, moments.index(keys), strict=True))
-    lengths = [(int(raw[i, i]) << BITS) >> (2 * half[i]) for i in range(len(keys))]
-    return matrix, shifts, lengths
-
-
-def _vanishes(pivot: int, length: int) -> bool:
-    return pivot <= 0 or Fraction(pivot) <= Fraction(DEPENDENCE_TOLERANCE) ** 2 * length
-
-
-def dependence(moments: Moments, keys: Sequence[Key], *, intercept: bool) -> Dependence | None:
-    """The first column that is an exact combination of the ones before it, or None."""
-    if not keys:
-        return None
-    matrix, shifts, lengths = _start(moments, keys, intercept)
-    for k, key in enumerate(keys):
-        pivot = int(matrix[k, k])
-        if _vanishes(pivot, lengths[k]):
-            weights: list[tuple[Key | None, float]] = []
-            slopes = [_scaled(int(matrix[i, k]), shifts[k] - shifts[i]) for i in range(k)]
-            means = [_power(Fraction(int(moments.sums[p]), moments.n), moments.units[p]) for p in moments.index(keys[: k + 1])]
-            spread = max([abs(float(m)) for m in means] + [1e-300])
-            for i in range(k):
-                rounded = float(f"{float(slopes[i]):.10g}")
-                if abs(slopes[i]) * _power(Fraction(1), shifts[i] - shifts[k]) > Fraction(1, 10**11):
-                    weights.append((keys[i], rounded))
-            if intercept:
-                constant = float(means[k] - sum((s * m for s, m in zip(slopes, means, strict=False)), Fraction(0)))
-                if abs(constant) > 1e-11 * spread or not weights:
-                    weights.append((None, float(f"{constant:.10g}")))
-            relative = math.sqrt(max(pivot, 0) / lengths[k]) if lengths[k] else 0.0
-            return Dependence(key, tuple(weights), relative)
-        matrix = _swept(matrix, k)
-    return None
-
-
-def independent_of(moments: Moments, keys: Sequence[Key], *, intercept: bool) -> tuple[Key, ...]:
-    """The columns that are no exact combination of the ones before them, in order."""
-    if not keys:
-        return ()
-    matrix, _, lengths = _start(moments, keys, intercept)
-    kept: list[Key] = []
-    for k, key in enumerate(keys):
-        if not _vanishes(int(matrix[k, k]), lengths[k]):
-            matrix = _swept(matrix, k)
-            kept.append(key)
-    return tuple(kept)
 
 
 def tableau_of(moments: Moments, outcome: Key, keys: Sequence[Key], *, intercept: bool) -> Tableau:
     """Sweep a model in.
+
+    Parameters
+    ----------
+    moments : Moments
+        Holding the outcome and all ``keys``.
+    outcome : Key
+    keys : sequence of Key
+        Columns of the model besides the intercept.
+    intercept : bool
+
+    Returns
+    -------
+    Tableau
 
     Raises
     ------
@@ -354,38 +297,56 @@ def tableau_of(moments: Moments, outcome: Key, keys: Sequence[Key], *, intercept
         When a column is an exact combination of the ones before it.
     """
     everything = (*keys, outcome)
-    matrix, shifts, lengths = _start(moments, everything, intercept)
+    matrix, shifts, lengths = start(moments, everything, intercept)
     total = int(matrix[-1, -1])
     for k in range(len(keys)):
-        if _vanishes(int(matrix[k, k]), lengths[k]):
+        if vanishes(int(matrix[k, k]), lengths[k]):
             raise RankDeficient(f"column {k + 1} of the model is an exact combination of the others")
-        matrix = _swept(matrix, k)
+        matrix = swept(matrix, k)
     return Tableau(moments, outcome, tuple(keys), intercept, shifts, matrix, total)
 
 
-def _sqrt(value: Fraction) -> float:
-    """Square root, to double precision."""
-    if value <= 0:
-        return 0.0
-    shift = 2 * BITS + max(0, value.denominator.bit_length() - value.numerator.bit_length())
-    shift += shift % 2
-    return float(Fraction(math.isqrt((value.numerator << shift) // value.denominator), 1 << (shift // 2)))
-
-
 def fit_of(tableau: Tableau, blocks: Mapping[str, tuple[Key, ...]]) -> Fit:
-    """The classical fit of a swept model, with a test for each block of columns."""
+    """The classical fit of a swept model, with a test for each block of columns.
+
+    Parameters
+    ----------
+    tableau : Tableau
+    blocks : mapping of predictor to its columns
+
+    Returns
+    -------
+    Fit
+        An exact fit has errors of 0 and no t, p, F, AIC or BIC.
+
+    Raises
+    ------
+    Unrepresentable
+        When a coefficient or a sum of squares is too large or too small for a double.
+    """
+    try:
+        fit = _fit_of(tableau, blocks)
+    except OverflowError as error:
+        raise Unrepresentable(_BEYOND) from error
+    smallest = min((c.standard_error for c in fit.coefficients), default=math.inf)
+    if not fit.exact and (fit.rss < SMALLEST_RSS or smallest < SMALLEST_ERROR):
+        raise Unrepresentable(_BEYOND)
+    return fit
+
+
+def _fit_of(tableau: Tableau, blocks: Mapping[str, tuple[Key, ...]]) -> Fit:
+    """The fit, with Python's own fault for what is too large."""
     n, p, df = tableau.n, tableau.p, tableau.df
     rss, tss = tableau.rss, tableau.tss
     exact = tableau.exact
     s2 = Fraction(0) if exact or df <= 0 else rss / df
     coefficients: list[Coefficient] = []
     if tableau.intercept:
-        se = _sqrt(s2) * float(tableau.constant_root())
+        se = square_root(s2) * float(tableau.constant_root())
         coefficients.append(_coefficient(None, float(tableau.constant), se, df, exact))
-    residual = max(int(tableau.matrix[-1, -1]), 0)
     for k, key in enumerate(tableau.keys):
-        variance = Fraction(0) if exact else _scaled(residual, 0) * -_scaled(int(tableau.matrix[k, k]), 2 * (tableau.shifts[-1] - tableau.shifts[k])) / df
-        coefficients.append(_coefficient(key, float(tableau.slope(k)), _sqrt(variance), df, exact))
+        variance = Fraction(0) if exact else s2 * tableau.inverse_diagonal(k)
+        coefficients.append(_coefficient(key, float(tableau.slope(k)), square_root(variance), df, exact))
     tests = {name: _test(name, keys, tableau, coefficients, exact) for name, keys in blocks.items()}
     r2 = float(1 - rss / tss) if tss else 0.0
     if exact:
@@ -394,15 +355,15 @@ def fit_of(tableau: Tableau, blocks: Mapping[str, tuple[Key, ...]]) -> Fit:
     model_df = len(tableau.keys)
     f = None if exact or not model_df or rss == 0 else float(((tss - rss) / model_df) / (rss / df))
     total_df = n - int(tableau.intercept)
-    log_likelihood_part = None if exact else n * math.log(2 * math.pi * float(rss / n)) + n
+    deviance = None if exact or float(rss) < SMALLEST_RSS else n * math.log(2 * math.pi * float(rss / n)) + n
     return Fit(
         n=n, p=p, df_residual=df, df_inference=df, coefficients=tuple(coefficients), tests=tests,
         rss=0.0 if exact else float(rss), tss=float(tss), r_squared=r2,
         adjusted_r_squared=r2 if exact else float(1 - (rss / df) / (tss / total_df)),
-        residual_sd=_sqrt(s2), f=f, f_df=(model_df, df),
+        residual_sd=square_root(s2), f=f, f_df=(model_df, df),
         f_p=None if f is None else float(fdtrc(model_df, df, f)),
-        aic=None if log_likelihood_part is None else log_likelihood_part + 2 * p,
-        bic=None if log_likelihood_part is None else log_likelihood_part + p * math.log(n),
+        aic=None if deviance is None else deviance + 2 * p,
+        bic=None if deviance is None else deviance + p * math.log(n),
         exact=exact,
     )  # fmt: skip
 
@@ -414,12 +375,19 @@ def _coefficient(key: Key | None, estimate: float, se: float, df: int, exact: bo
     return Coefficient(key=key, estimate=estimate, standard_error=se, t=t, p=2.0 * float(stdtr(df, -abs(t))))
 
 
-def _test(name: str, keys: tuple[Key, ...], tableau: Tableau, coefficients: list[Coefficient], exact: bool) -> TermTest:
+def _test(
+    name: str, keys: tuple[Key, ...], tableau: Tableau, coefficients: list[Coefficient], exact: bool
+) -> TermTest:
+    if not keys:
+        # A category with one level in these rows has no column, and nothing of it can be tested.
+        return TermTest(predictor=name, df=0, statistic=None, p=None, partial_f2=None)
     gain, rss = tableau.gain(keys), max(int(tableau.matrix[-1, -1]), 0)
     f2 = None if exact or rss == 0 else float(Fraction(gain, rss))
     if len(keys) == 1:
         own = next(c for c in coefficients if c.key == keys[0])
-        return TermTest(predictor=name, df=1, statistic=None if own.t is None else abs(own.t), p=own.p, partial_f2=f2)
+        return TermTest(
+            predictor=name, df=1, statistic=None if own.t is None else abs(own.t), p=own.p, partial_f2=f2
+        )
     f = None if f2 is None else f2 * tableau.df / len(keys)
     p = None if f is None else float(fdtrc(len(keys), tableau.df, f))
     return TermTest(predictor=name, df=len(keys), statistic=f, p=p, partial_f2=f2)
@@ -455,16 +423,19 @@ def added_column_test(
     shift = half + moments.units[places[-1]]
     # Into the tableau's scale: about * 2^(u_i + u_z) = value * 2^(shift_i + shift_z - BITS).
     scaled = [
-        _fixed(int(v), moments.units[p] + moments.units[places[-1]] - s - shift)
+        fixed(int(v), moments.units[p] + moments.units[places[-1]] - s - shift)
         for v, p, s in zip(line[:-1], places[:-1], tableau.shifts, strict=True)
     ]
     k = len(tableau.keys)
     # The inverse stands negated in the tableau.
-    weighed = [sum(int(a) * b for a, b in zip(row, scaled[:-1], strict=True)) >> BITS for row in tableau.matrix[:k, :k]]
-    own_fixed = _fixed(own, 2 * (moments.units[places[-1]] - shift))
+    weighed = [
+        sum(int(a) * b for a, b in zip(row, scaled[:-1], strict=True)) >> BITS
+        for row in tableau.matrix[:k, :k]
+    ]
+    own_fixed = fixed(own, 2 * (moments.units[places[-1]] - shift))
     pivot = own_fixed + (sum(a * b for a, b in zip(weighed, scaled[:-1], strict=True)) >> BITS)
     raw = moments.n * int(moments.products[places[-1], places[-1]])
-    if df < 1 or tableau.exact or _vanishes(pivot, _fixed(raw, 2 * (moments.units[places[-1]] - shift))):
+    if df < 1 or tableau.exact or vanishes(pivot, fixed(raw, 2 * (moments.units[places[-1]] - shift))):
         return None
     slopes = [int(v) for v in tableau.matrix[:k, -1]]
     joint = scaled[-1] - (sum(a * b for a, b in zip(slopes, scaled[:-1], strict=True)) >> BITS)
@@ -472,60 +443,26 @@ def added_column_test(
     rest = Fraction(int(tableau.matrix[-1, -1]), ONE) - gain
     if rest <= Fraction(EXACT_FIT_TOLERANCE) ** 2 * Fraction(tableau.total, ONE):
         return None
-    t = math.copysign(_sqrt(gain / (rest / df)), joint)
+    t = math.copysign(square_root(gain / (rest / df)), joint)
     return t, 2.0 * float(stdtr(df, -abs(t))), df
 
 
-def _fixed(value: int, shift: int) -> int:
-    """``value * 2**shift`` in fixed point."""
-    up = BITS + shift
-    return value << up if up >= 0 else value >> -up
+def _centred(weights: Sequence[Sequence[Fraction]], means: Sequence[Fraction]) -> list[Fraction]:
+    """Constants that put forms about the means."""
+    return [
+        -sum((row[form] * mean for row, mean in zip(weights, means, strict=True)), Fraction(0))
+        for form in range(len(means))
+    ]
 
 
-def unit_inverse(moments: Moments, keys: Sequence[Key], *, centred: bool) -> FloatArray:
-    """Inverse of the cross-products scaled to a unit diagonal, shape (k, k)."""
-    matrix, shifts, lengths = _start(moments, keys, centred)
-    diagonal = [int(matrix[k, k]) for k in range(len(keys))]
-    for k in range(len(keys)):
-        if _vanishes(int(matrix[k, k]), lengths[k]):
-            raise RankDeficient(f"column {k + 1} is an exact combination of the others")
-        matrix = _swept(matrix, k)
-    del shifts
-    out = np.empty((len(keys), len(keys)))
-    for i in range(len(keys)):
-        for j in range(i + 1):
-            scale = math.isqrt(diagonal[i] * diagonal[j])
-            out[i, j] = out[j, i] = float(Fraction(-int(matrix[i, j]) * scale, 1 << (2 * BITS)))
-    return out
-
-
-def triangle_of(moments: Moments, keys: Sequence[Key], *, intercept: bool) -> FloatArray:
-    """Upper triangle R with R'R the cross-products of all columns scaled to unit length.
-
-    The intercept, where there is one, is the first column; nothing is centred.
-    """
-    size = len(keys) + int(intercept)
-    places = moments.index(keys)
-    gram = np.zeros((size, size), object)
-    first = int(intercept)
-    gram[first:, first:] = moments.products[np.ix_(places, places)]
-    if intercept:
-        gram[0, 0] = moments.n
-        gram[0, 1:] = gram[1:, 0] = moments.sums[places]
-    half = [(int(gram[i, i]).bit_length() + 1) // 2 for i in range(size)]
-    wide = max(2 * BITS, *half) if half else 2 * BITS
-    up = np.array([1 << (wide - h) for h in half], object)
-    matrix = ((gram * up[:, None]) * up[None, :]) >> (2 * wide - BITS)
-    lengths = [int(matrix[k, k]) for k in range(size)]
-    out = np.zeros((size, size))
-    for k in range(size):
-        pivot = int(matrix[k, k])
-        if pivot <= 0:
-            raise RankDeficient(f"column {k + 1} is an exact combination of the others")
-        row = matrix[k, k:]
-        for j in range(k, size):
-            value = Fraction(int(row[j - k]) ** 2, pivot * lengths[j])
-            out[k, j] = math.copysign(_sqrt(value), int(row[j - k]))
-        rest = matrix[k + 1 :, k + 1 :] - ((matrix[k + 1 :, k][:, None] * row[1:][None, :]) // pivot)
-        matrix[k + 1 :, k + 1 :] = rest
-    return out
+def _cholesky(matrix: list[list[int]]) -> list[list[int]]:
+    """Lower triangle L with L L' the matrix, all in fixed point."""
+    k = len(matrix)
+    lower = [[0] * k for _ in range(k)]
+    for j in range(k):
+        own = (matrix[j][j] << BITS) - sum(lower[j][m] ** 2 for m in range(j))
+        lower[j][j] = math.isqrt(max(own, 1))
+        for i in range(j + 1, k):
+            rest = (matrix[i][j] << BITS) - sum(lower[i][m] * lower[j][m] for m in range(j))
+            lower[i][j] = rest // lower[j][j]
+    return lower

@@ -79,7 +79,9 @@ class FitTerm(Record):
 
     term: str = Field(description="Name of the term: intercept, a predictor, a level or a product.")
     predictor: str | None = Field(description="Predictor of the plan to which it belongs.")
-    transform: str | None = Field(default=None, description="Rung of the ladder under which the predictor stands.")
+    transform: str | None = Field(
+        default=None, description="Rung of the ladder under which the predictor stands."
+    )
     exponent: float | None = Field(default=None, description="Learned exponent of a Box-Cox power.")
     level: str | None = Field(default=None, description="Level of a category whose indicator this is.")
     coefficient: float = Field(description="Estimate, in units of the fitted outcome per unit of the term.")

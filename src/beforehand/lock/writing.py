@@ -160,7 +160,9 @@ def _flow(value: Any, formats: Mapping[type, Format] = _COMPUTED) -> str:
         values = values_of(value)
         if value.left_out:
             # What most records have not is left out where it is null, so that a line can be read.
-            present = [n for n, item in enumerate(values) if item is not None or names[n] not in value.left_out]
+            present = [
+                n for n, item in enumerate(values) if item is not None or names[n] not in value.left_out
+            ]
             names, values = tuple([names[n] for n in present]), [values[n] for n in present]
         return _template(names) % tuple([_flow(item) for item in values])
     if isinstance(value, Mapping):

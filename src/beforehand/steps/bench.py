@@ -131,7 +131,7 @@ class Bench(Protocol):
         ...
 
     def curvature(self, fitted: Fitted, name: str, alpha: float) -> Checked:
-        """t test of the predictor's added square."""
+        """T test of the predictor's added square."""
         ...
 
     def spread(self, fitted: Fitted, name: str | None, test: str, alpha: float) -> Checked:
@@ -180,7 +180,9 @@ class Bench(Protocol):
         """The same coefficients with other standard errors."""
         ...
 
-    def best_subset(self, model: Model, alpha: float, forced: Callable[[tuple[str, ...]], bool]) -> Model | None:
+    def best_subset(
+        self, model: Model, alpha: float, forced: Callable[[tuple[str, ...]], bool]
+    ) -> Model | None:
         """Largest adjusted R² among the subsets that ``forced`` admits and whose rest is significant."""
         ...
 

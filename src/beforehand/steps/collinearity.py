@@ -142,9 +142,7 @@ def _joint_signal(
     return None
 
 
-def _judge(
-    pair: Pair, state: State, plan: Plan, bench: Bench, keeping: Keeping, rulings: Rulings
-) -> State:
+def _judge(pair: Pair, state: State, plan: Plan, bench: Bench, keeping: Keeping, rulings: Rulings) -> State:
     """Three fits of one pair: both, without the first, without the second."""
     model = bench.design(state)
     both = bench.fit(model, "working model")
@@ -163,7 +161,14 @@ def _judge(
             _rule(rulings, examined, "collinearity.when_one_significant", other, "left_to_selection", plan)
             return state
         return _remove(
-            other, examined, "collinearity.when_one_significant", "weaker_leaves", state, plan, keeping, rulings
+            other,
+            examined,
+            "collinearity.when_one_significant",
+            "weaker_leaves",
+            state,
+            plan,
+            keeping,
+            rulings,
         )
     return _both(examined, state, plan, keeping, rulings)
 
@@ -178,7 +183,7 @@ class Examined:
     alone_second: Fitted
 
     def alone_p(self, name: str) -> float:
-        """p of one of the pair in the fit without the other; 0 in an exact fit."""
+        """P of one of the pair in the fit without the other; 0 in an exact fit."""
         fitted = self.alone_first if name == self.pair.first else self.alone_second
         p = fitted.p_of(name) if name in fitted.fit.tests else 1.0
         return 0.0 if p is None else p
@@ -260,9 +265,7 @@ def _both(examined: Examined, state: State, plan: Plan, keeping: Keeping, ruling
         _rule(rulings, examined, clause, weaker, ground, plan, evidence, value, limit)
         return state
     ground = "large_change_weaker_leaves" if large else "small_change_weaker_leaves"
-    return _remove(
-        weaker, examined, clause, ground, state, plan, keeping, rulings, evidence, value, limit
-    )
+    return _remove(weaker, examined, clause, ground, state, plan, keeping, rulings, evidence, value, limit)
 
 
 def _largest_shift(both: Fitted, without: Fitted, gone: Term) -> tuple[float, str]:
@@ -333,6 +336,4 @@ def _rule(
         value, limit = examined.both.p_of(name), plan.alpha
         if ground in ("both_leave", "significant_alone_stays"):
             value = examined.alone_p(name)
-    return rulings.add(
-        clause, name, ground, fits=examined.ids, evidence=numbers, value=value, limit=limit
-    )
+    return rulings.add(clause, name, ground, fits=examined.ids, evidence=numbers, value=value, limit=limit)

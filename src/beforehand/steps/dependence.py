@@ -15,9 +15,7 @@ from beforehand.steps.rulings import Ruling, Rulings
 from beforehand.steps.state import State
 
 
-def remove_dependent(
-    state: State, plan: Plan, bench: Bench, step: str
-) -> tuple[State, tuple[Ruling, ...]]:
+def remove_dependent(state: State, plan: Plan, bench: Bench, step: str) -> tuple[State, tuple[Ruling, ...]]:
     """Take out one predictor after another until the columns of the working model are independent."""
     rulings = Rulings(step, state.rulings_made)
     keeping = Keeping(plan)
@@ -32,9 +30,7 @@ def remove_dependent(
     return replace(state, rulings_made=rulings.count), tuple(rulings.made)
 
 
-def _resolve(
-    state: State, keeping: Keeping, linked: Linked, rulings: Rulings, step: str
-) -> State:
+def _resolve(state: State, keeping: Keeping, linked: Linked, rulings: Rulings, step: str) -> State:
     """Remove the latest member that nothing holds, or stop."""
     evidence: dict[str, float | str | int | bool | None] = {"column": linked.column}
     evidence |= {f"weight of {name}": weight for name, weight in linked.weights}

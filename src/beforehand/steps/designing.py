@@ -33,9 +33,7 @@ class Designer:
         """The working model of a state."""
         products = {product_name(parts): parts for parts in self._plan.products}
         terms = tuple(
-            self._product(name, products[name], state)
-            if name in products
-            else self._plain(name, state)
+            self._product(name, products[name], state) if name in products else self._plain(name, state)
             for name in state.working
         )
         outcome = Key((factor_of(self._plan.outcome.column, state.outcome),))

@@ -83,9 +83,7 @@ def _spread(state: State, plan: Plan, bench: Bench, fitted: Fitted, rulings: Rul
     action = plan.final_checks.if_spread_unequal
     if action == "robust_errors" and state.errors != "classical":
         action = "report"
-    state = _ruled(
-        state, rulings, "final_checks.if_spread_unequal", "the model", checked, action, "spread"
-    )
+    state = _ruled(state, rulings, "final_checks.if_spread_unequal", "the model", checked, action, "spread")
     if not checked.failed or action != "robust_errors":
         return state
     robust = bench.robust(fitted, ROBUST_FORM, "robust standard errors")

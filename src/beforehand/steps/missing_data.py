@@ -143,9 +143,7 @@ def _rows_without_outcome(
     )
 
 
-def _too_empty(
-    state: State, plan: Plan, masks: Mapping[str, Mask], rows: int, rulings: Rulings
-) -> State:
+def _too_empty(state: State, plan: Plan, masks: Mapping[str, Mask], rows: int, rulings: Rulings) -> State:
     """A predictor missing in more than the limit leaves, unless kept; a kept one needs a fill."""
     keeping = Keeping(plan)
     limit = plan.missing_data.remove_predictor_above
@@ -199,9 +197,7 @@ def _fill(
             continue
         values, shown = _learned(how, column, observed, positions, state, table, masks, has_outcome)
         method = "value" if isinstance(how, FillValue) else how
-        made.append(
-            Filled(predictor=name, method=method, positions=positions, values=values, shown=shown)
-        )
+        made.append(Filled(predictor=name, method=method, positions=positions, values=values, shown=shown))
         rulings.add(
             f"missing_data.fill.{name}", name, "filled",
             evidence={"method": method, "value": shown, "cells": len(positions)},
@@ -322,7 +318,7 @@ def _incomplete_rows(
         return state
     evidence: dict[str, float | int | str | bool | None] = {"rows": gone, "of": rows, "share": gone / rows}
     evidence |= {f"missing in {m.predictor}": m.rows_left for m in missing if m.rows_left}
-    ruling = rulings.add("missing_data.otherwise", "incomplete rows", "incomplete_rows_leave", evidence=evidence)
-    return replace(
-        state, row_departures=(*state.row_departures, *_departures(table, incomplete, ruling.id))
+    ruling = rulings.add(
+        "missing_data.otherwise", "incomplete rows", "incomplete_rows_leave", evidence=evidence
     )
+    return replace(state, row_departures=(*state.row_departures, *_departures(table, incomplete, ruling.id)))

@@ -16,12 +16,12 @@ from numpy.typing import NDArray
 from beforehand.fit import assumptions, exponents, influence, ladder, robust
 from beforehand.fit.columns import FloatArray, Key
 from beforehand.fit.conditioning import Condition, condition, inflation_of, inflation_without
-from beforehand.fit.sums import exact_sum
 from beforehand.fit.elementary import log
 from beforehand.fit.moments import Moments, moments_of
 from beforehand.fit.results import Check, Fit
 from beforehand.fit.rows import RowValues, row_values
 from beforehand.fit.subsets import best_subsets
+from beforehand.fit.sums import exact_sum
 from beforehand.fit.tableau import RankDeficient, Tableau, dependence, fit_of, tableau_of
 from beforehand.plan import Plan
 from beforehand.steps.bench import Checked, Comparison, Fitted, Linked, Measures, Positions
@@ -186,7 +186,7 @@ class RecordingBench:
         return Transform(rung, found.exponent)
 
     def curvature(self, fitted: Fitted, name: str, alpha: float) -> Checked:
-        """t test of the predictor's added square about its mean."""
+        """T test of the predictor's added square about its mean."""
         model = fitted.model
         self._prepare_squares(model)
 
@@ -317,7 +317,9 @@ class RecordingBench:
     ) -> Sequence[Comparison]:
         """Each flagged row left out alone; rows of leverage 1 come out of the exact moments."""
         model = fitted.model
-        sole = {int(row): self._sole(model, int(measures.positions[row])) for row in flagged if measures.sole[row]}
+        sole = {
+            int(row): self._sole(model, int(measures.positions[row])) for row in flagged if measures.sole[row]
+        }
         others = np.array([row for row in flagged.tolist() if row not in sole], dtype=np.int64)
         compared = dict(zip(others.tolist(), self._compared(fitted, measures, others, alpha), strict=True))
         compared |= sole
@@ -432,9 +434,7 @@ class RecordingBench:
     def _keep(self, model: Model, fit: Fit, why: str) -> Fitted:
         fitted = Fitted(f"F{len(self.record.fits) + 1:03d}", model, fit)
         self._fitted[model] = fitted
-        self.record.fits.append(
-            RecordedFit(id=fitted.id, step=self.step, why=why, model=model, fit=fit)
-        )
+        self.record.fits.append(RecordedFit(id=fitted.id, step=self.step, why=why, model=model, fit=fit))
         self._tell(f"{self.step.replace('_', ' ')}: {why}")
         return fitted
 

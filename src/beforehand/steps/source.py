@@ -7,8 +7,8 @@ from collections.abc import Callable, Mapping
 import numpy as np
 from numpy.typing import NDArray
 
-from beforehand.fit.columns import Factor, FloatArray, Key
 from beforehand.fit import ladder
+from beforehand.fit.columns import Factor, FloatArray, Key
 from beforehand.steps.missing_data import Base
 from beforehand.table import Table
 

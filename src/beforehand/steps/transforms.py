@@ -49,9 +49,7 @@ def _predictor(name: str, state: State, plan: Plan, bench: Bench, rulings: Rulin
     return _unmended(name, state, plan, bench, rulings, fitted)
 
 
-def _climb(
-    name: str, rung: str, state: State, plan: Plan, bench: Bench, rulings: Rulings
-) -> State | None:
+def _climb(name: str, rung: str, state: State, plan: Plan, bench: Bench, rulings: Rulings) -> State | None:
     """Try one rung; the state with it adopted, or None."""
     model = bench.design(state)
     reason = bench.domain(name, rung, model.rows)
@@ -63,7 +61,9 @@ def _climb(
     try:
         fitted = bench.fit(bench.design(trial), f"{name} under {rung}")
     except RankDeficient as error:
-        rulings.add("transforms.try", name, "rung_not_applicable", evidence={"rung": rung}, because=str(error))
+        rulings.add(
+            "transforms.try", name, "rung_not_applicable", evidence={"rung": rung}, because=str(error)
+        )
         return None
     checks = _checks(fitted, name, plan, bench)
     failed = [check for check in checks if check.failed]
@@ -77,9 +77,7 @@ def _climb(
     return trial
 
 
-def _unmended(
-    name: str, state: State, plan: Plan, bench: Bench, rulings: Rulings, fitted: Fitted
-) -> State:
+def _unmended(name: str, state: State, plan: Plan, bench: Bench, rulings: Rulings, fitted: Fitted) -> State:
     """No rung passes: the predictor leaves, or stays as it is when the plan or a keep rule says so."""
     p = fitted.p_of(name)
     state = replace(state, unmended=(*state.unmended, name))

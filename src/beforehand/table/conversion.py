@@ -32,7 +32,12 @@ class Odd:
 
 
 def numbers_of(
-    cells: Sequence[str], data: Data, name: str, column: str, row_name: Callable[[int], str], lines: Sequence[int]
+    cells: Sequence[str],
+    data: Data,
+    name: str,
+    column: str,
+    row_name: Callable[[int], str],
+    lines: Sequence[int],
 ) -> tuple[NDArray[np.float64], list[Fault]]:
     """Numbers of a column, NaN where a missing code stands, and the faults of the rest."""
     missing = frozenset(data.missing_codes)
@@ -64,7 +69,7 @@ def _short(cell: str) -> str:
 def _complaint(cell: str, data: Data) -> str:
     """Why a cell is no number, with what would be right where that is plain."""
     if not cell:
-        return "an empty cell is not a number (declare \"\" in data.missing_codes if it means missing)"
+        return 'an empty cell is not a number (declare "" in data.missing_codes if it means missing)'
     other = "," if data.decimal == "." else "."
     if _NUMBER.fullmatch(cell.replace(other, ".")) and cell.count(other) == 1:
         return f"{_short(cell)} is not a number with the decimal mark {data.decimal!r} (declare data.decimal)"
@@ -81,7 +86,11 @@ def _faults(
     for what, rows in list(odd.rows.items())[:NAMED]:
         where = named([row_name(row) for row in rows])
         plural = "row" if len(rows) == 1 else "rows"
-        found.append(fault(name, lines[rows[0]] if lines else None, column, f"{what} ({plural} {where})", "not_a_number"))
+        found.append(
+            fault(
+                name, lines[rows[0]] if lines else None, column, f"{what} ({plural} {where})", "not_a_number"
+            )
+        )
     rest = list(odd.rows.values())[NAMED:]
     if rest:
         rows = [row for group in rest for row in group]

@@ -119,7 +119,11 @@ def _label_faults(plan: Plan, read: AsRead, name_row: Callable[[int], str]) -> l
     empty = [row for row, label in enumerate(labels) if label is None]
     if empty:
         where = named([f"on line {line}" if (line := read.line(row)) else str(row + 1) for row in empty])
-        what = f"the row label is missing (rows {where})" if len(empty) > 1 else f"the row label is missing (row {where})"
+        what = (
+            f"the row label is missing (rows {where})"
+            if len(empty) > 1
+            else f"the row label is missing (row {where})"
+        )
         faults.append(fault(read.file, read.line(empty[0]), column, what, "missing_label"))
     if len(set(labels)) < len(labels) - max(0, len(empty) - 1):
         seen: dict[str, int] = {}

@@ -171,7 +171,9 @@ def _profile(
     if not present:
         return ColumnProfile(name=name, kind="empty", share_missing=share)
     if len(distinct) == 1:
-        return ColumnProfile(name=name, kind="constant", share_missing=share, levels=tuple(distinct), distinct=1)
+        return ColumnProfile(
+            name=name, kind="constant", share_missing=share, levels=tuple(distinct), distinct=1
+        )
     if all(_DATE.fullmatch(cell) for cell in distinct):
         return ColumnProfile(name=name, kind="date", share_missing=share, distinct=len(distinct))
     values, faults = numbers_of(present, Data(file="table.csv", decimal=decimal), "", name, str, ())

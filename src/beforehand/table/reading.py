@@ -84,9 +84,7 @@ def _typed(
     for column, want in wanted.items():
         if want.kind == "text":
             typed[column] = texts_of(columns[column], plan.data)
-    namer = row_namer(
-        AsRead(file=name, columns=typed, n_rows=len(lines), lines=lines), plan.data.row_label
-    )
+    namer = row_namer(AsRead(file=name, columns=typed, n_rows=len(lines), lines=lines), plan.data.row_label)
     faults: list[Fault] = []
     for column, want in wanted.items():
         if want.kind == "number":
