@@ -66,7 +66,9 @@ def tables(draw) -> pd.DataFrame:
 @st.composite
 def plans(draw) -> dict:
     """A plan with every block drawn."""
-    predictors: list[dict] = [{"column": name} for name in draw(st.lists(st.sampled_from(NAMES), min_size=1, unique=True))]  # fmt: skip
+    predictors: list[dict] = [
+        {"column": name} for name in draw(st.lists(st.sampled_from(NAMES), min_size=1, unique=True))
+    ]
     names = [p["column"] for p in predictors]
     for name in draw(st.lists(st.sampled_from(["g", "h"]), unique=True)):
         levels = ["u", "v", "w"] if name == "g" else ["p", "q"]
@@ -74,21 +76,42 @@ def plans(draw) -> dict:
         names.append(name)
     steps = [step for step in STEPS if draw(st.integers(0, 5))]
     plan: dict = {
-        "language": 1, "title": "Drawn", "question": "Does it stand?", "data": {"file": "drawn.csv"},
-        "outcome": {"column": "y"}, "predictors": predictors, "steps": steps,
+        "language": 1,
+        "title": "Drawn",
+        "question": "Does it stand?",
+        "data": {"file": "drawn.csv"},
+        "outcome": {"column": "y"},
+        "predictors": predictors,
+        "steps": steps,
         "alpha": draw(st.sampled_from([0.01, 0.05, 0.3])),
         "intercept": draw(st.sampled_from([True, True, True, False])),
         "missing_data": {
             "remove_predictor_above": draw(st.sampled_from([0.0, 0.4, 1.0])),
             "fill": {
-                name: draw(st.sampled_from(["most_common"] if name in "gh" else ["mean", "median", "most_common", "regression", {"value": 1}]))
+                name: draw(
+                    st.sampled_from(
+                        ["most_common"]
+                        if name in "gh"
+                        else ["mean", "median", "most_common", "regression", {"value": 1}]
+                    )
+                )
                 for name in draw(st.lists(st.sampled_from(names), unique=True, max_size=2))
             },
         },
         "assumptions": {
             "equal_spread": draw(st.sampled_from(["skip", {"test": "white"}, {"test": "breusch_pagan"}])),
-            "normal_residuals": draw(st.sampled_from(["skip", {"test": "shapiro_wilk"}, {"test": "jarque_bera"}])),
-            "independence": draw(st.sampled_from([{}, {"in_order_of": "t"}, {"in_order_of": "t", "test": "durbin_watson", "between": [1.5, 2.5]}])),
+            "normal_residuals": draw(
+                st.sampled_from(["skip", {"test": "shapiro_wilk"}, {"test": "jarque_bera"}])
+            ),
+            "independence": draw(
+                st.sampled_from(
+                    [
+                        {},
+                        {"in_order_of": "t"},
+                        {"in_order_of": "t", "test": "durbin_watson", "between": [1.5, 2.5]},
+                    ]
+                )
+            ),
         },
         "transforms": {
             "when": draw(st.sampled_from([["curvature"], ["spread"], ["curvature", "spread"]])),
@@ -102,19 +125,39 @@ def plans(draw) -> dict:
             "if_large": draw(st.sampled_from(["remove_weaker", "keep_both"])),
         },
         "influence": {
-            "flag_when": draw(st.sampled_from([{}, {"dffits": "2*sqrt(p/n)", "dfbetas": "2/sqrt(n)", "covariance_ratio": "3*p/n"}])),
-            "remove_when": draw(st.sampled_from([{}, {"coefficient": 0.2}, {"r_squared": 0.01, "significance_changes": True, "sign_changes": True}])),
+            "flag_when": draw(
+                st.sampled_from(
+                    [{}, {"dffits": "2*sqrt(p/n)", "dfbetas": "2/sqrt(n)", "covariance_ratio": "3*p/n"}]
+                )
+            ),
+            "remove_when": draw(
+                st.sampled_from(
+                    [
+                        {},
+                        {"coefficient": 0.2},
+                        {"r_squared": 0.01, "significance_changes": True, "sign_changes": True},
+                    ]
+                )
+            ),
             "at_most": draw(st.sampled_from([0.0, 0.05, 0.5])),
         },
-        "selection": {"method": draw(st.sampled_from(["backward", "none", "backward_aic", "backward_bic", "best_subset"]))},
+        "selection": {
+            "method": draw(
+                st.sampled_from(["backward", "none", "backward_aic", "backward_bic", "best_subset"])
+            )
+        },
         "weak_model": {"with_theory": draw(st.sampled_from(["report", "try_selection"]))},
         "errors": draw(st.sampled_from(["classical", "classical", "hc0", "hc3", {"cluster_by": "t"}])),
-    }  # fmt: skip
+    }
     if len(names) > 1 and draw(st.booleans()):
         plan["products"] = [names[:2]]
     if draw(st.booleans()):
         rule = draw(st.sampled_from(["always", {"unless_p_above": 0.4}]))
-        plan["keep"] = [{"predictor": names[0], "rule": rule, "because": "Theory.", "expected_sign": "positive"}] if names[0] not in "gh" else [{"predictor": names[0], "rule": rule, "because": "Theory."}]  # fmt: skip
+        plan["keep"] = (
+            [{"predictor": names[0], "rule": rule, "because": "Theory.", "expected_sign": "positive"}]
+            if names[0] not in "gh"
+            else [{"predictor": names[0], "rule": rule, "because": "Theory."}]
+        )
     if len(names) > 2 and draw(st.booleans()):
         plan.setdefault("keep", []).append({"at_least_one_of": names[1:3], "because": "One of them."})
     if draw(st.integers(0, 4)) == 0:
@@ -129,8 +172,9 @@ def attempted(plan: dict, frame: pd.DataFrame) -> Run | None:
     try:
         return run(plan_from_mapping(plan), frame)
     except BeforehandError as error:
-        assert str(error)
-        return None
+        said = str(error)
+    assert said
+    return None
 
 
 @SLOW
@@ -178,9 +222,13 @@ def test_units_scale_a_coefficient_and_move_no_ruling(seed, factor):
     frame = pd.DataFrame({name: np.exp(rng.normal(size=50) * 0.4) for name in NAMES})
     frame["y"] = 2 * frame["a"] + frame["b"] ** 2 + rng.normal(size=50)
     plan = {
-        "language": 1, "title": "Units", "question": "Do units matter?", "data": {"file": "units.csv"},
-        "outcome": {"column": "y"}, "predictors": [{"column": name} for name in NAMES],
-    }  # fmt: skip
+        "language": 1,
+        "title": "Units",
+        "question": "Do units matter?",
+        "data": {"file": "units.csv"},
+        "outcome": {"column": "y"},
+        "predictors": [{"column": name} for name in NAMES],
+    }
     before = run(plan_from_mapping(plan), frame).lock
     after = run(plan_from_mapping(plan), frame.assign(a=frame["a"] * factor)).lock
     assert [(r.subject, r.ground) for r in before.rulings] == [(r.subject, r.ground) for r in after.rulings]

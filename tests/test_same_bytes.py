@@ -70,7 +70,9 @@ def test_reordered_keys_comments_and_quotes_change_nothing(ready, tmp_path):
     before = locked(plan)
     data = yaml.safe_load(plan.read_text(encoding="utf-8"))
     turned = dict(reversed(list(data.items())))
-    plan.write_text("# another comment\n" + yaml.safe_dump(turned, sort_keys=False, allow_unicode=True), encoding="utf-8")  # fmt: skip
+    plan.write_text(
+        "# another comment\n" + yaml.safe_dump(turned, sort_keys=False, allow_unicode=True), encoding="utf-8"
+    )
     assert locked(plan) == before
 
 
@@ -124,10 +126,14 @@ def test_a_large_table_gives_the_same_bytes_in_any_order_and_block(tmp_path, mon
     frame["y"] = 3 * frame["a"] + 2e-3 * frame["b"] + frame["c"] + rng.standard_t(4, size=len(frame))
     plan = plan_from_mapping(
         {
-            "language": 1, "title": "Many rows", "question": "Same bytes?", "data": {"file": "many.csv"},
-            "outcome": {"column": "y"}, "predictors": [{"column": name} for name in "abcdef"],
+            "language": 1,
+            "title": "Many rows",
+            "question": "Same bytes?",
+            "data": {"file": "many.csv"},
+            "outcome": {"column": "y"},
+            "predictors": [{"column": name} for name in "abcdef"],
         }
-    )  # fmt: skip
+    )
     before = lock_text(run(plan, frame).lock)
     monkeypatch.setattr(moments, "BLOCK_ROWS", 777)
     monkeypatch.setattr(linear, "BLOCK_CELLS", 9_000)

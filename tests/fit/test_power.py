@@ -58,7 +58,8 @@ def test_needed_n_is_the_smallest() -> None:
         assert found is not None
         reached = power_of(partial_f2=effect, n=found, p=p, df=df, alpha=alpha)
         before = power_of(partial_f2=effect, n=found - 1, p=p, df=df, alpha=alpha)
-        assert reached is not None and reached >= power
+        assert reached is not None
+        assert reached >= power
         assert before is None or before < power
 
 
@@ -109,7 +110,8 @@ def test_effects_that_no_sample_finds() -> None:
     assert needed_n(partial_f2=0.0, p=3) is None
     assert needed_n(partial_f2=1e-12, p=3) is None
     largest = needed_n(partial_f2=8e-9, p=3)
-    assert largest is not None and largest < MOST_ROWS
+    assert largest is not None
+    assert largest < MOST_ROWS
 
 
 def test_huge_effects_need_one_residual_degree_of_freedom_or_so() -> None:

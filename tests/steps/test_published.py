@@ -31,9 +31,12 @@ def test_cement_backward_elimination_drops_x3_then_x4(alpha):
 
 @pytest.mark.parametrize(
     ("kept", "expected", "p_of_last"),
-    [(["x4"], ["intercept", "x1", "x2", "x4"], ("x4", 0.205395)), (["x3"], ["intercept", "x1", "x2", "x3"], ("x3", 0.208889)),
-     (["x3", "x4"], ["intercept", "x1", "x3", "x4"], ("x3", 0.0696923))],
-)  # fmt: skip
+    [
+        (["x4"], ["intercept", "x1", "x2", "x4"], ("x4", 0.205395)),
+        (["x3"], ["intercept", "x1", "x2", "x3"], ("x3", 0.208889)),
+        (["x3", "x4"], ["intercept", "x1", "x3", "x4"], ("x3", 0.0696923)),
+    ],
+)
 def test_cement_with_keep_rules(kept, expected, p_of_last):
     """A kept predictor never leaves, whatever its p (values recomputed with scipy and statsmodels)."""
     rules = [{"predictor": name, "rule": "always", "because": "It is in the theory."} for name in kept]
@@ -78,7 +81,12 @@ def test_longley_condition_indices():
 def anscombe(number, **blocks):
     """One of Anscombe's four tables under the default steps up to selection."""
     x, y = ANSCOMBE[number]
-    return run_on({"x": x, "y": y}, "y", steps=["missing_data", "transforms", "collinearity", "influence", "selection"], **blocks)  # fmt: skip
+    return run_on(
+        {"x": x, "y": y},
+        "y",
+        steps=["missing_data", "transforms", "collinearity", "influence", "selection"],
+        **blocks,
+    )
 
 
 def test_anscombe_one_is_adopted_as_it_is():
@@ -122,9 +130,13 @@ def test_stack_loss_row_21():
     """Brownlee's row 21: Cook's distance .692, external t -3.33 (Cook 1977; Daniel & Wood)."""
     table = {"row": [f"r{i:02d}" for i in range(1, 22)], **STACK_LOSS}
     done = run_on(
-        table, "y", data={"row_label": "row"}, predictors=[{"column": c} for c in ("x1", "x2", "x3")],
-        steps=["influence"], influence={"at_most": "0%", "remove_when": {"coefficient": 100.0}},
-    )  # fmt: skip
+        table,
+        "y",
+        data={"row_label": "row"},
+        predictors=[{"column": c} for c in ("x1", "x2", "x3")],
+        steps=["influence"],
+        influence={"at_most": "0%", "remove_when": {"coefficient": 100.0}},
+    )
     row = next(r for r in done.lock.checks.influence if r.row == "r21")
     assert row.stays
     assert row.cooks_distance == pytest.approx(0.6920, abs=5e-5)
@@ -137,9 +149,13 @@ def test_stack_loss_without_row_21():
     """Without row 21 the coefficients are -43.70, .889, .817, -.107."""
     table = {"row": [f"r{i:02d}" for i in range(1, 22)], **STACK_LOSS}
     done = run_on(
-        table, "y", data={"row_label": "row"}, predictors=[{"column": c} for c in ("x1", "x2", "x3")],
-        steps=["influence"], influence={"remove_when": {"coefficient": 1.0}, "at_most": "1%"},
-    )  # fmt: skip
+        table,
+        "y",
+        data={"row_label": "row"},
+        predictors=[{"column": c} for c in ("x1", "x2", "x3")],
+        steps=["influence"],
+        influence={"remove_when": {"coefficient": 1.0}, "at_most": "1%"},
+    )
     assert [r.row for r in done.lock.rows_removed] == ["r21"]
     assert [t.coefficient for t in terms(done).values()] == pytest.approx(
         [-43.70403096, 0.889108181, 0.8166198714, -0.1071413686], rel=1e-9

@@ -247,7 +247,11 @@ def _both(examined: Examined, state: State, plan: Plan, keeping: Keeping, ruling
     large_r2 = limits.r_squared is not None and r_squared >= limits.r_squared
     large_b = limits.coefficient is not None and coefficient >= limits.coefficient
     large = large_r2 or large_b
-    evidence = {"change_r_squared": r_squared, "change_coefficient": coefficient, "of": column}
+    evidence: dict[str, float | str] = {
+        "change_r_squared": r_squared,
+        "change_coefficient": coefficient,
+        "of": column,
+    }
     # The margin is that of the criterion which decides: the nearer to its limit where neither does.
     shares = [
         (abs(value / limit - 1.0), value, limit)

@@ -125,14 +125,14 @@ def evaluate(key: Key, read: ReadColumn, levels: ReadLevels) -> FloatArray:
     assert product is not None
     if key.centre is None:
         return product
-    about = product - key.centre
+    about: FloatArray = product - key.centre
     return about * about
 
 
 def _factor(factor: Factor, values: FloatArray, levels: ReadLevels) -> FloatArray:
     """One factor: the indicator of a level, or a number under its rung."""
     if factor.level:
-        return (values == levels(factor.column).index(factor.level)).astype(np.float64)
+        return np.asarray(values == levels(factor.column).index(factor.level), dtype=np.float64)
     if factor.rung == "identity":
         return values
     return ladder.apply(factor.rung, values, factor.exponent)

@@ -92,4 +92,5 @@ def ranks_of(table: Table, column: str) -> NDArray[np.int64]:
     place = np.empty(len(order) + 1, dtype=np.int64)
     place[order] = np.arange(len(order))
     place[-1] = len(order)
-    return place[found.values]
+    ranked: NDArray[np.int64] = place[found.values]
+    return ranked

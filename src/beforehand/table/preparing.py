@@ -289,6 +289,11 @@ def _derive(plan: Plan, columns: dict[str, Column]) -> dict[str, int]:
     return counts
 
 
+def _bound(value: float | None) -> str:
+    """One end of a declared range; an open end is empty."""
+    return "" if value is None else f"{value:.15g}"
+
+
 def _ranges(
     plan: Plan,
     columns: dict[str, Column],
@@ -318,7 +323,7 @@ def _ranges(
         place = int(np.flatnonzero(index == rows[0])[0])
         what = (
             f"{values[place]:.15g} is outside the declared range "
-            f"[{'' if limits[0] is None else f'{limits[0]:.15g}'}, {'' if limits[1] is None else f'{limits[1]:.15g}'}] "
+            f"[{_bound(limits[0])}, {_bound(limits[1])}] "
             f"({'row' if len(rows) == 1 else 'rows'} {where})"
         )
         faults.append(fault(read.file, read.line(rows[0]), name, what, "out_of_range"))
