@@ -28,9 +28,8 @@ from beforehand.plan import KeepGroup
 from beforehand.running import Trail
 from beforehand.steps.bench import Fitted
 from beforehand.steps.keeping import name_of
-from beforehand.steps.recording import column_name
 from beforehand.steps.rulings import Ruling
-from beforehand.steps.state import IDENTITY, Model, Transform
+from beforehand.steps.state import IDENTITY, Model, Transform, column_name
 
 
 def answer_of(trail: Trail) -> Answer | None:

@@ -15,10 +15,11 @@ from statsmodels.stats.stattools import durbin_watson
 from beforehand.fit import assumptions, robust
 from beforehand.fit.columns import Key
 from beforehand.fit.conditioning import condition, inflation_of, inflation_without
+from beforehand.fit.fitting import fit_of
 from beforehand.fit.influence import influence, without_each
 from beforehand.fit.moments import ArraySource, moments_of, named
 from beforehand.fit.rows import row_values
-from beforehand.fit.tableau import added_column_test, fit_of, tableau_of
+from beforehand.fit.tableau import added_column_test, tableau_of
 
 SEEDS = range(40)
 Y = named("y")

@@ -12,10 +12,11 @@ from statsmodels.stats.outliers_influence import OLSInfluence
 from threadpoolctl import threadpool_limits
 
 from beforehand.fit import linear
+from beforehand.fit.fitting import fit_of
 from beforehand.fit.influence import influence, without_each
 from beforehand.fit.moments import ArraySource, moments_of, named
 from beforehand.fit.rows import row_values
-from beforehand.fit.tableau import fit_of, tableau_of
+from beforehand.fit.tableau import tableau_of
 
 Y = named("y")
 MEASURES = ("internal", "external", "cooks_distance", "dffits", "largest_dfbetas", "covariance_ratio")

@@ -13,8 +13,9 @@ import mpmath
 import numpy as np
 import pytest
 
+from beforehand.fit.fitting import fit_of
 from beforehand.fit.moments import ArraySource, moments_of, named
-from beforehand.fit.tableau import fit_of, tableau_of
+from beforehand.fit.tableau import tableau_of
 
 
 def numbers(text: str) -> list[float]:

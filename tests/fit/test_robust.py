@@ -12,10 +12,11 @@ from threadpoolctl import threadpool_limits
 
 from beforehand.fit import linear
 from beforehand.fit import moments as moments_module
+from beforehand.fit.fitting import fit_of
 from beforehand.fit.moments import ArraySource, moments_of, named
 from beforehand.fit.robust import NotEstimable, robust_fit
 from beforehand.fit.rows import row_values
-from beforehand.fit.tableau import fit_of, tableau_of
+from beforehand.fit.tableau import tableau_of
 
 Y = named("y")
 KINDS = ("hc0", "hc1", "hc2", "hc3")

@@ -14,8 +14,10 @@ from threadpoolctl import threadpool_limits
 
 from beforehand.fit import moments as moments_module
 from beforehand.fit.columns import Factor, Key
+from beforehand.fit.fitting import Unrepresentable, fit_of
 from beforehand.fit.moments import ArraySource, moments_of, named
-from beforehand.fit.tableau import RankDeficient, Unrepresentable, added_column_test, fit_of, tableau_of
+from beforehand.fit.sweeping import RankDeficient
+from beforehand.fit.tableau import added_column_test, tableau_of
 
 Y = named("y")
 

@@ -8,14 +8,13 @@ from dataclasses import dataclass
 import numpy as np
 
 from beforehand.fit.columns import FloatArray, Key
+from beforehand.fit.dependence import dependence
 from beforehand.fit.moments import Moments
-from beforehand.fit.tableau import dependence
 from beforehand.plan import Plan
 from beforehand.review.findings import Finding, caution, figure, listed, note, percent
 from beforehand.steps.keeping import Keeping
-from beforehand.steps.recording import column_name
 from beforehand.steps.source import TableSource
-from beforehand.steps.state import Model
+from beforehand.steps.state import Model, column_name
 
 # A predictor with one value in so large a share of the rows rests on the few others.
 NEARLY_CONSTANT = 0.95

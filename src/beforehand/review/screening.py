@@ -18,9 +18,8 @@ from beforehand.review.findings import Finding, caution, note, percent
 from beforehand.review.size import ColumnCount, Detectable, column_counts, detectable, size_findings
 from beforehand.steps.designing import Designer
 from beforehand.steps.missing_data import Base, missing_data
-from beforehand.steps.recording import blocks_of
 from beforehand.steps.source import TableSource
-from beforehand.steps.state import State
+from beforehand.steps.state import State, blocks_of
 from beforehand.table import Stage, Table
 
 # A table that loses a larger share of its rows to gaps answers the question for the others only.

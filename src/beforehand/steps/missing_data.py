@@ -13,9 +13,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from beforehand.fit.columns import Factor, Key
+from beforehand.fit.dependence import dependence
 from beforehand.fit.descriptives import shape_of
 from beforehand.fit.moments import ArraySource, moments_of
-from beforehand.fit.tableau import dependence, tableau_of
+from beforehand.fit.tableau import tableau_of
 from beforehand.plan import FillValue, Plan
 from beforehand.steps.keeping import Keeping, product_name
 from beforehand.steps.rulings import Ruling, Rulings

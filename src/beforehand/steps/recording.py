@@ -7,81 +7,30 @@ those rows less a few, is small work on them. Rows are touched only where a meas
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass, field, replace
-from typing import TypeVar
+from dataclasses import replace
 
 import numpy as np
-from numpy.typing import NDArray
 
-from beforehand.fit import assumptions, exponents, influence, ladder, robust
+from beforehand.fit import assumptions, influence, ladder, robust
 from beforehand.fit.columns import FloatArray, Key
-from beforehand.fit.conditioning import Condition, condition, inflation_of, inflation_without
-from beforehand.fit.elementary import log
-from beforehand.fit.moments import Moments, moments_of
+from beforehand.fit.conditioning import condition, inflation_of, inflation_without
+from beforehand.fit.fitting import fit_of
+from beforehand.fit.moments import Moments
 from beforehand.fit.results import Check, Fit
-from beforehand.fit.rows import RowValues, row_values
+from beforehand.fit.rows import RowValues
 from beforehand.fit.subsets import best_subsets
-from beforehand.fit.sums import exact_sum
-from beforehand.fit.tableau import RankDeficient, Tableau, dependence, fit_of, tableau_of
+from beforehand.fit.tableau import Tableau
 from beforehand.plan import Plan
 from beforehand.steps.bench import Checked, Comparison, Fitted, Linked, Measures, Positions
+from beforehand.steps.comparisons import compared
 from beforehand.steps.designing import Designer
 from beforehand.steps.keeping import Keeping
+from beforehand.steps.linking import linked_of
+from beforehand.steps.profiles import learned
+from beforehand.steps.records import CollinearityRecord, Record, RecordedCheck, RecordedFit
 from beforehand.steps.source import TableSource
-from beforehand.steps.state import Model, Rows, State, Transform, factor_of
-
-_K = TypeVar("_K")
-_V = TypeVar("_V")
-
-# How many tableaus and sets of row values are kept at hand; older ones are computed anew.
-AT_HAND = 6
-
-# Models that differ from one at hand by at most so many columns are reached by taking them out.
-NEAR = 40
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class RecordedFit:
-    """A fit with the step that first asked for it and why."""
-
-    id: str
-    step: str
-    why: str
-    model: Model
-    fit: Fit
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class RecordedCheck:
-    """A check with its place in the run."""
-
-    id: str
-    stage: str
-    subject: str | None
-    fit: str
-    alpha: float
-    check: Check
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class CollinearityRecord:
-    """Correlations, variance inflation and condition indices of one model at one stage."""
-
-    stage: str
-    model: Model
-    correlations: tuple[tuple[str, str, float], ...]
-    inflation: tuple[tuple[str, float], ...]
-    condition: Condition
-
-
-@dataclass(slots=True)
-class Record:
-    """Everything that a run leaves behind, in the order first asked for."""
-
-    fits: list[RecordedFit] = field(default_factory=list)
-    checks: list[RecordedCheck] = field(default_factory=list)
-    collinearity: list[CollinearityRecord] = field(default_factory=list)
-    tables: dict[str, object] = field(default_factory=dict)
+from beforehand.steps.state import Model, Rows, State, Transform, blocks_of
+from beforehand.steps.workings import Workings
 
 
 class RecordingBench:
@@ -116,13 +65,9 @@ class RecordingBench:
         self._order, self._groups = order, groups
         self._progress = progress
         self._designer = Designer(plan, source)
-        self._moments: Moments | None = None
-        self._reduced: dict[tuple[int, ...], Moments] = {}
-        self._sources: dict[tuple[int, ...], TableSource] = {}
+        self._workings = Workings(source, self._tell)
         self._fitted: dict[Model, Fitted] = {}
         self._checked: dict[tuple[str, str, str | None, str], Checked] = {}
-        self._tableaus: dict[Model, Tableau] = {}
-        self._row_values: dict[Model, RowValues] = {}
         self._inflation: dict[Model, tuple[tuple[str, float], ...]] = {}
 
     # -- what a step asks for ---------------------------------------------------------------
@@ -164,26 +109,18 @@ class RecordingBench:
 
     def two_valued(self, name: str, rows: Rows) -> bool:
         """Whether a numeric predictor has fewer than three values in these rows."""
-        values = self._source(rows).raw(name)
+        values = self._workings.source(rows).raw(name)
         low, high = values.min(), values.max()
         return bool(np.all((values == low) | (values == high)))
 
     def domain(self, name: str, rung: str, rows: Rows) -> str:
         """Why a rung cannot be applied; '' when it can. The outcome goes by the name ''."""
-        values = self._source(rows).raw(name or self._plan.outcome.column)
+        values = self._workings.source(rows).raw(name or self._plan.outcome.column)
         return ladder.domain(rung, values, way_back=not name)
 
     def learn(self, model: Model, name: str, rung: str) -> Transform:
         """The rung with its exponent learned from this model."""
-        if rung != "box_cox":
-            return Transform(rung)
-        if name:
-            return Transform(rung, exponents.predictor_exponent(self._profile(model, name)))
-        values = self._source(model.rows).raw(self._plan.outcome.column)
-        found = exponents.outcome_exponent(
-            self._profile(model, ""), n=model.rows.n, log_total=exact_sum(log(values))
-        )
-        return Transform(rung, found.exponent)
+        return learned(self._workings, model, name, rung, self._plan.outcome.column)
 
     def curvature(self, fitted: Fitted, name: str, alpha: float) -> Checked:
         """T test of the predictor's added square about its mean."""
@@ -197,7 +134,7 @@ class RecordingBench:
                     name="curvature", statistic=None, p=None, not_applicable=f"{name} has two values only"
                 )
             square = self._square(term.keys[0])
-            moments = self._with(model.rows, (*model.keys, model.outcome, square))
+            moments = self._workings.moments(model.rows, (*model.keys, model.outcome, square))
             return assumptions.curvature(self.tableau(model), square, moments)
 
         return self._check("curvature", fitted, name, alpha, make)
@@ -209,7 +146,9 @@ class RecordingBench:
         judge = assumptions.white if test == "white" else assumptions.breusch_pagan
         return self._check(
             test, fitted, name, alpha,
-            lambda: judge(self._source(model.rows), self.tableau(model), keys, self.values(model).residual),
+            lambda: judge(
+                self._workings.source(model.rows), self.tableau(model), keys, self.values(model).residual
+            ),
         )  # fmt: skip
 
     def normality(self, fitted: Fitted, test: str, alpha: float) -> Checked:
@@ -234,7 +173,7 @@ class RecordingBench:
             if test == "durbin_watson":
                 return assumptions.durbin_watson(residual, order, exact=fitted.fit.exact)
             return assumptions.breusch_godfrey(
-                self._source(model.rows), self.tableau(model), residual, order, lags
+                self._workings.source(model.rows), self.tableau(model), residual, order, lags
             )
 
         return self._check(test, fitted, None, alpha, make)
@@ -245,34 +184,17 @@ class RecordingBench:
         return self._check(
             "reset", fitted, None, alpha,
             lambda: assumptions.reset(
-                self._source(model.rows), self.tableau(model), self.values(model).fitted
+                self._workings.source(model.rows), self.tableau(model), self.values(model).fitted
             ),
         )  # fmt: skip
 
     def dependence(self, model: Model) -> Linked | None:
         """The first exact linear dependence among the columns, in plan order."""
-        # A category of which one level is left, or a product of it, has no column at all.
-        empty = next((term.name for term in model.terms if not term.keys), None)
-        if empty is not None:
-            return Linked(predictor=empty, column=empty, weights=(), constant=True, members=(empty,))
-        moments = self._with(model.rows, (*model.keys, model.outcome))
-        found = dependence(moments, model.keys, intercept=model.intercept)
-        if found is None:
-            return None
-        owner = {key: term.name for term in model.terms for key in term.keys}
-        weights = tuple((column_name(key), weight) for key, weight in found.weights)
-        members = (owner[found.key], *(owner[key] for key, _ in found.weights if key is not None))
-        return Linked(
-            predictor=owner[found.key],
-            column=column_name(found.key),
-            weights=weights,
-            constant=all(key is None for key, _ in found.weights),
-            members=tuple(dict.fromkeys(members)),
-        )
+        return linked_of(self._workings, model)
 
     def correlations(self, model: Model) -> Sequence[tuple[str, str, float]]:
         """Correlations of every pair of single-column predictors, in plan order."""
-        moments = self._with(model.rows, model.keys)
+        moments = self._workings.moments(model.rows, model.keys)
         single = [term for term in model.terms if term.single]
         return tuple(
             (one.name, other.name, moments.correlation(one.keys[0], other.keys[0]))
@@ -284,14 +206,14 @@ class RecordingBench:
         """VIF of each predictor; for a block the generalized VIF to the power 1/df."""
         known = self._inflation.get(model)
         if known is None:
-            moments = self._with(model.rows, model.keys)
+            moments = self._workings.moments(model.rows, model.keys)
             found = inflation_of(moments, blocks_of(model), intercept=model.intercept)
             known = self._inflation[model] = tuple((name, found[name]) for name in model.names)
         return known
 
     def inflation_without(self, model: Model, name: str) -> Mapping[str, float]:
         """VIF of one predictor after each other predictor in turn has been left out."""
-        moments = self._with(model.rows, model.keys)
+        moments = self._workings.moments(model.rows, model.keys)
         return inflation_without(moments, blocks_of(model), name, intercept=model.intercept)
 
     def measures(self, fitted: Fitted, *, dfbetas: bool) -> Measures:
@@ -299,10 +221,10 @@ class RecordingBench:
         model = fitted.model
         self._tell(f"influence of {model.rows.n:,} rows")
         found = influence.influence(
-            self._source(model.rows), self.tableau(model), self.values(model), dfbetas=dfbetas
+            self._workings.source(model.rows), self.tableau(model), self.values(model), dfbetas=dfbetas
         )
         return Measures(
-            positions=_kept(model.rows),
+            positions=model.rows.kept,
             leverage=found.leverage,
             studentized=found.external,
             cooks_distance=found.cooks_distance,
@@ -338,7 +260,7 @@ class RecordingBench:
         if not len(rows):
             return ()
         model, tableau, values = fitted.model, self.tableau(fitted.model), self.values(fitted.model)
-        chosen = self._source(model.rows).select(rows)
+        chosen = self._workings.source(model.rows).select(rows)
         found = influence.without_each(
             chosen,
             tableau,
@@ -347,26 +269,13 @@ class RecordingBench:
             outcome=chosen.read(model.outcome, 0, len(rows)),
             blocks=blocks_of(model),
         )
-        owner = [term.name for term in model.terms for _ in term.keys]
-        significance = _significance_changes(fitted, found, alpha)
-        signs = _sign_changes(fitted, found, owner, alpha)
-        return tuple(
-            Comparison(
-                position=int(measures.positions[row]),
-                change_r_squared=float(found.change_r_squared[at]),
-                change_coefficient=float(found.change_coefficient[at]),
-                of=column_name(model.keys[int(found.column[at])]),
-                significance_changes=tuple(name for name, changes in significance.items() if changes[at]),
-                sign_changes=tuple(name for name, changes in signs.items() if changes[at]),
-            )
-            for at, row in enumerate(rows.tolist())
-        )
+        return compared(fitted, found, measures.positions[rows], alpha)
 
     def best_subset(
         self, model: Model, alpha: float, forced: Callable[[tuple[str, ...]], bool]
     ) -> Model | None:
         """Largest adjusted R² among lawful subsets whose other predictors are significant."""
-        moments = self._with(model.rows, (*model.keys, model.outcome))
+        moments = self._workings.moments(model.rows, (*model.keys, model.outcome))
         places = {key: place for place, key in enumerate(model.keys)}
         keeping = Keeping(self._plan)
         found = best_subsets(
@@ -403,31 +312,16 @@ class RecordingBench:
     # -- what the answer asks for ------------------------------------------------------------
 
     def tableau(self, model: Model) -> Tableau:
-        """The swept cross-products of a model, reached from a near one where there is one."""
-        plain = replace(model, errors="classical")
-        known = self._tableaus.get(plain)
-        if known is None:
-            known = self._from_near(plain) or tableau_of(
-                self._with(plain.rows, (*plain.keys, plain.outcome)),
-                plain.outcome,
-                plain.keys,
-                intercept=plain.intercept,
-            )
-            _remember(self._tableaus, plain, known)
-        return known
+        """The swept cross-products of a model."""
+        return self._workings.tableau(model)
 
     def values(self, model: Model) -> RowValues:
         """Fitted values, residuals and leverages of the rows in use."""
-        plain = replace(model, errors="classical")
-        known = self._row_values.get(plain)
-        if known is None:
-            known = row_values(self._source(plain.rows), self.tableau(plain))
-            _remember(self._row_values, plain, known)
-        return known
+        return self._workings.values(model)
 
     def moments(self, model: Model) -> Moments:
         """Exact moments of a model's columns and outcome in its rows."""
-        return self._with(model.rows, (*model.keys, model.outcome))
+        return self._workings.moments(model.rows, (*model.keys, model.outcome))
 
     # -- inside ------------------------------------------------------------------------------
 
@@ -458,88 +352,22 @@ class RecordingBench:
         if self._progress is not None:
             self._progress(what)
 
-    def _with(self, rows: Rows, keys: Sequence[Key]) -> Moments:
-        """Moments of these rows that hold at least these columns."""
-        if self._moments is None:
-            self._tell(f"cross-products of {rows.base:,} rows")
-            self._moments = moments_of(self._base, tuple(dict.fromkeys(keys)))
-        missing = [key for key in dict.fromkeys(keys) if key not in self._moments]
-        if missing:
-            self._moments = self._moments.extended(self._base, missing)
-        if not rows.gone:
-            return self._moments
-        reduced = self._reduced.get(rows.gone)
-        if reduced is None or any(key not in reduced for key in keys):
-            positions = np.array(rows.gone, dtype=np.int64)
-            values = np.column_stack([self._base.rows(key, positions) for key in self._moments.keys])
-            reduced = self._moments.without(values)
-            _remember(self._reduced, rows.gone, reduced)
-        return reduced
-
-    def _from_near(self, model: Model) -> Tableau | None:
-        """A tableau at hand whose model holds this one and a few columns more."""
-        wanted = set(model.keys)
-        best: tuple[int, Model] | None = None
-        for other in self._tableaus:
-            if (other.rows, other.outcome, other.intercept) != (model.rows, model.outcome, model.intercept):
-                continue
-            extra = len(other.keys) - len(model.keys)
-            if 0 <= extra <= NEAR and wanted <= set(other.keys) and (best is None or extra < best[0]):
-                best = (extra, other)
-        if best is None:
-            return None
-        gone = [key for key in best[1].keys if key not in wanted]
-        return self._tableaus[best[1]].without(gone)
-
-    def _source(self, rows: Rows) -> TableSource:
-        """The columns over these rows."""
-        if not rows.gone:
-            return self._base
-        known = self._sources.get(rows.gone)
-        if known is None:
-            known = self._base.without(rows.gone)
-            _remember(self._sources, rows.gone, known)
-        return known
-
     def _square(self, key: Key) -> Key:
         """The added square of a column, about its mean in the base."""
-        assert self._moments is not None
-        return Key(key.factors, centre=self._moments.mean(key))
+        return Key(key.factors, centre=self._workings.mean(key))
 
     def _prepare_squares(self, model: Model) -> None:
         """One pass over the rows for the added squares of every number in the model."""
-        self._with(model.rows, (*model.keys, model.outcome))
+        self._workings.moments(model.rows, (*model.keys, model.outcome))
         squares = [self._square(term.keys[0]) for term in model.terms if term.kind == "number"]
-        self._with(model.rows, (*model.keys, model.outcome, *squares))
-
-    def _profile(self, model: Model, name: str) -> Callable[[float], float]:
-        """Residual sum of squares of the model with one column under a Box-Cox power."""
-
-        def rss_of(exponent: float) -> float:
-            transform = Transform("box_cox", exponent)
-            column = name or self._plan.outcome.column
-            key = Key((factor_of(column, transform),))
-            source = self._source(model.rows)
-            if name:
-                keys = tuple(key if k == model.term(name).keys[0] else k for k in model.keys)
-                outcome = model.outcome
-            else:
-                keys, outcome = model.keys, key
-            # A trial power is looked at once, so its cross-products are not kept with the others.
-            moments = self._with(model.rows, (*model.keys, model.outcome)).extended(source, (key,))
-            try:
-                return float(tableau_of(moments, outcome, keys, intercept=model.intercept).rss)
-            except RankDeficient:
-                return float("inf")
-
-        return rss_of
+        self._workings.moments(model.rows, (*model.keys, model.outcome, *squares))
 
     def _robust(self, model: Model, fit: Fit, errors: str) -> Fit:
         """The fit with other standard errors."""
         plain = replace(model, errors="classical")
         sole = np.flatnonzero(self.values(plain).leverage >= 1.0)
         if errors in ("hc2", "hc3") and len(sole):
-            label = self._source(model.rows).label(int(sole[0]))
+            label = self._workings.source(model.rows).label(int(sole[0]))
             raise robust.NotEstimable(
                 f"row {label} alone makes a coefficient (leverage 1), so {errors} standard errors do not "
                 "exist for this model: declare other errors, or leave the row or the predictor out"
@@ -547,7 +375,7 @@ class RecordingBench:
         lags = getattr(self._plan.errors, "autocorrelation_lags", None)
         return robust.robust_fit(
             fit,
-            self._source(model.rows),
+            self._workings.source(model.rows),
             self.tableau(plain),
             self.values(plain),
             blocks_of(model),
@@ -559,7 +387,7 @@ class RecordingBench:
 
     def _collinearity(self, model: Model) -> CollinearityRecord:
         """Correlations, inflation and condition of a model."""
-        moments = self._with(model.rows, (*model.keys, model.outcome))
+        moments = self._workings.moments(model.rows, (*model.keys, model.outcome))
         return CollinearityRecord(
             stage=self.step,
             model=model,
@@ -567,49 +395,3 @@ class RecordingBench:
             inflation=tuple(self.inflation(model)),
             condition=condition(moments, model.keys, intercept=model.intercept),
         )
-
-
-def _kept(rows: Rows) -> Positions:
-    """Positions of the rows in use, ascending."""
-    return np.delete(np.arange(rows.base, dtype=np.int64), rows.gone)
-
-
-def _significance_changes(
-    fitted: Fitted, found: influence.WithoutEach, alpha: float
-) -> Mapping[str, NDArray[np.bool_]]:
-    """For each predictor, without which rows its significance is another."""
-    return {name: (p <= alpha) != fitted.significant(name, alpha) for name, p in found.p.items()}
-
-
-def _sign_changes(
-    fitted: Fitted, found: influence.WithoutEach, owner: Sequence[str], alpha: float
-) -> Mapping[str, NDArray[np.bool_]]:
-    """For each predictor, without which rows a sign differs, where it is significant in either fit."""
-    changes: dict[str, NDArray[np.bool_]] = {}
-    slopes = [c.estimate for c in fitted.fit.coefficients if c.key is not None]
-    for place, name in enumerate(owner):
-        turned = (found.estimates[:, place] * slopes[place]) < 0.0
-        matters = (found.p[name] <= alpha) | fitted.significant(name, alpha)
-        changes[name] = changes.get(name, np.zeros(len(turned), dtype=bool)) | (turned & matters)
-    return changes
-
-
-def blocks_of(model: Model) -> Mapping[str, tuple[Key, ...]]:
-    """Columns of each predictor, in plan order."""
-    return {term.name: term.keys for term in model.terms}
-
-
-def column_name(key: Key | None) -> str:
-    """A design column as it is named in the record: predictor, level, parts."""
-    if key is None:
-        return "intercept"
-    return " × ".join(
-        f"{factor.column} = {factor.level}" if factor.level else factor.column for factor in key.factors
-    )
-
-
-def _remember(cache: dict[_K, _V], key: _K, value: _V) -> None:
-    """Keep the newest few."""
-    cache[key] = value
-    while len(cache) > AT_HAND:
-        del cache[next(iter(cache))]

@@ -65,6 +65,11 @@ class Rows:
         """Rows in use."""
         return self.base - len(self.gone)
 
+    @property
+    def kept(self) -> Positions:
+        """Positions of the rows in use, ascending."""
+        return np.delete(np.arange(self.base, dtype=np.int64), self.gone)
+
     def without(self, positions: tuple[int, ...]) -> Rows:
         """The same rows less ``positions`` (positions in the base)."""
         return Rows(self.base, tuple(sorted({*self.gone, *positions})))
@@ -189,3 +194,17 @@ class NearMiss:
 def factor_of(column: str, transform: Transform) -> Factor:
     """A numeric column under its transform."""
     return Factor(column=column, rung=transform.rung, exponent=transform.exponent)
+
+
+def blocks_of(model: Model) -> Mapping[str, tuple[Key, ...]]:
+    """Columns of each predictor, in plan order."""
+    return {term.name: term.keys for term in model.terms}
+
+
+def column_name(key: Key | None) -> str:
+    """A design column as it is named in the record: predictor, level, parts."""
+    if key is None:
+        return "intercept"
+    return " × ".join(
+        f"{factor.column} = {factor.level}" if factor.level else factor.column for factor in key.factors
+    )

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 
-from beforehand.fit.tableau import RankDeficient
+from beforehand.fit.sweeping import RankDeficient
 from beforehand.plan import Plan
 from beforehand.steps.bench import Bench, Checked, Fitted
 from beforehand.steps.keeping import Keeping
