@@ -15,7 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from beforehand.fit.columns import FloatArray, Key, Source
-from beforehand.fit.slices import BITS, sliced
+from beforehand.fit.slices import BITS, ORDINARY_EXPONENT, Slicer
 
 # Cells of a block of forms: small enough to stay in a cache while it is summed.
 BLOCK_CELLS = 1 << 17
@@ -116,35 +116,60 @@ def evaluated(source: Source, forms: Forms) -> Iterator[tuple[int, int, FloatArr
     """
     q = max(1, len(forms.scale))
     rows = max(256, min(8192, BLOCK_CELLS // max(q, len(forms.keys) or 1)))
+    work = _Work(forms, min(rows, source.n_rows))
     for start in range(0, source.n_rows, rows):
         stop = min(start + rows, source.n_rows)
-        yield start, stop, _block(source, forms, start, stop)
+        yield start, stop, work.block(source, start, stop)
 
 
-def _block(source: Source, forms: Forms, start: int, stop: int) -> FloatArray:
-    """The forms over one block of rows."""
-    shape = (stop - start, len(forms.scale))
-    total = np.broadcast_to(forms.constant, shape).copy()
-    rest = np.broadcast_to(forms.constant_rest, shape).copy()
-    if forms.keys:
-        block = np.empty((stop - start, len(forms.keys)), order="F")
+class _Work:
+    """Evaluates forms block after block in one workspace."""
+
+    def __init__(self, forms: Forms, rows: int) -> None:
+        shape = (rows, len(forms.scale))
+        self._forms = forms
+        self._columns = np.empty((rows, len(forms.keys)), order="F")
+        self._slicer = Slicer(rows, forms.tops)
+        self._part, self._grown, self._back = (np.empty(shape) for _ in range(3))
+        # A part in units of a level becomes a value by a power of two; far ones need ldexp.
+        self._units = [forms.scale - BITS * (level + 2) for level in range(forms.levels)]
+        self._near = all(int(np.abs(unit).max(initial=0)) < ORDINARY_EXPONENT for unit in self._units)
+
+    def block(self, source: Source, start: int, stop: int) -> FloatArray:
+        """The forms over one block of rows."""
+        forms, n = self._forms, stop - start
+        shape = (n, len(forms.scale))
+        total = np.broadcast_to(forms.constant, shape).copy()
+        rest = np.broadcast_to(forms.constant_rest, shape).copy()
+        if not forms.keys:
+            return total + rest
+        columns = self._columns[:n]
         for place, key in enumerate(forms.keys):
-            block[:, place] = source.read(key, start, stop)
-        sums: list[FloatArray | None] = [None] * forms.levels
-        for depth, one in enumerate(sliced(block, forms.tops)):
-            for level in range(depth, forms.levels):
-                product = one @ forms.slices[level - depth]
-                known = sums[level]
-                sums[level] = product if known is None else known + product
-        for level, partial in enumerate(sums):
-            if partial is not None:
-                part = np.ldexp(partial, forms.scale - BITS * (level + 2))
-                # Knuth's two-sum: the rounding of each addition is kept.
-                grown = total + part
-                back = grown - total
-                rest += (total - (grown - back)) + (part - back)
-                total = grown
-    return total + rest
+            columns[:, place] = source.read(key, start, stop)
+        slices = self._slicer.cut(columns)
+        stack = self._slicer.stack[:n]
+        part, grown, back = self._part[:n], self._grown[:n], self._back[:n]
+        for level in range(forms.levels):
+            # Slices of depth 0 to level stand side by side, their weights one above the other.
+            deep = slices[: level + 1]
+            weights = np.concatenate(
+                [forms.slices[level - depth][one.places] for depth, one in enumerate(deep)]
+            )
+            np.matmul(stack[:, : len(weights)], weights, out=part)
+            if self._near:
+                np.multiply(part, np.ldexp(1.0, self._units[level]), out=part)
+            else:
+                np.ldexp(part, self._units[level], out=part)
+            # Knuth's two-sum: the rounding of each addition is kept.
+            np.add(total, part, out=grown)
+            np.subtract(grown, total, out=back)
+            part -= back
+            np.subtract(grown, back, out=back)
+            np.subtract(total, back, out=total)
+            rest += total
+            rest += part
+            total, grown = grown, total
+        return total + rest
 
 
 def _exponent(value: Fraction) -> int:

@@ -12,7 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from beforehand.fit.columns import Factor, FloatArray, Key, Source
-from beforehand.fit.slices import BITS, BLOCK_ROWS, ZERO_EXPONENT, exponents_of, sliced
+from beforehand.fit.slices import BITS, BLOCK_ROWS, ZERO_EXPONENT, Slicer, exponents_of
 
 Integers = NDArray[Any]  # of Python integers
 
@@ -100,12 +100,19 @@ class Moments:
         rows : FloatArray, shape (m, k)
             Values of rows that are in these moments, columns in the order of ``keys``.
         """
-        counted = _counted(rows, self.units)
-        sums, products = self.sums.copy(), self.products.copy()
-        for row in counted:
-            sums = sums - row
-            products = products - row[:, None] * row[None, :]
-        return Moments(self.keys, self.n - len(rows), self.units, self.tops, sums, products, self.places)
+        gone = moments_of(ArraySource({key: rows[:, place] for place, key in enumerate(self.keys)}), self.keys)
+        units = [min(one, other) for one, other in zip(self.units, gone.units, strict=True)]
+        sums, products = self._in_units(units)
+        gone_sums, gone_products = gone._in_units(units)
+        return Moments(
+            self.keys, self.n - len(rows), tuple(units), self.tops, sums - gone_sums,
+            products - gone_products, self.places,
+        )  # fmt: skip
+
+    def _in_units(self, units: Sequence[int]) -> tuple[Integers, Integers]:
+        """Sums and cross-products in units that are no coarser than those held."""
+        up = np.array([1 << (own - unit) for own, unit in zip(self.units, units, strict=True)], object)
+        return self.sums * up, self.products * up[:, None] * up[None, :]
 
     def restricted(self, keys: Sequence[Key]) -> Moments:
         """The moments of some of the columns."""
@@ -207,22 +214,19 @@ def _root(value: Fraction) -> float:
     return float(Fraction(root, 1 << (shift // 2)))
 
 
-def _counted(rows: FloatArray, units: Sequence[int]) -> Integers:
-    """Values as integers in the columns' units."""
-    out = np.empty(rows.shape, object)
-    for i in range(rows.shape[0]):
-        for j in range(rows.shape[1]):
-            numerator, denominator = float(rows[i, j]).as_integer_ratio()
-            shift = -units[j] - (denominator.bit_length() - 1)
-            out[i, j] = numerator << shift if shift >= 0 else numerator >> -shift
-    return out
+def _block_rows(n: int, k: int) -> int:
+    """Rows of a block of k columns: few enough for a cache, so many that its products are worth it."""
+    return min(n, BLOCK_ROWS, BLOCK_ROWS // 4 if k < 100 else BLOCK_ROWS)
 
 
 def _blocks(source: Source, keys: Sequence[Key]) -> Iterator[FloatArray]:
     """Values of all columns, block by block: shape (rows, len(keys))."""
-    for start in range(0, source.n_rows, BLOCK_ROWS):
-        stop = min(start + BLOCK_ROWS, source.n_rows)
-        block = np.empty((stop - start, len(keys)), order="F")
+    # One workspace for all blocks: a block is used up before the next one is asked for.
+    rows = _block_rows(source.n_rows, len(keys))
+    whole = np.empty((rows, len(keys)), order="F")
+    for start in range(0, source.n_rows, rows or 1):
+        stop = min(start + rows, source.n_rows)
+        block = whole[: stop - start]
         for place, key in enumerate(keys):
             block[:, place] = source.read(key, start, stop)
         yield block
@@ -235,11 +239,41 @@ _FLUSH = 512
 def _extended(old: Moments, source: Source, new: tuple[Key, ...]) -> Moments:
     """Moments with more columns: one pass to find their size, one to add up products of slices."""
     keys = (*old.keys, *new)
+    count, k = len(old.keys), len(keys)
+    top = np.array([*old.tops, *_tops(source, new)], dtype=np.int64)
+    sums, products, depth = _added_up(source, keys, count, top)
+    units = [int(t) - BITS * depth for t in top]
+    # Columns that were held before keep their finer or coarser unit: bring both to the finer.
+    final = [min(unit, old.units[p]) if p < count else unit for p, unit in enumerate(units)]
+    up_new = np.array([1 << (units[p] - final[p]) for p in range(k)], object)
+    old_sums, old_products = old._in_units(final[:count])
+    whole = np.zeros((k, k), object)
+    whole[:count, :count] = old_products
+    fresh = products * up_new[count:][:, None] * up_new[None, :]
+    whole[count:, :] = fresh
+    whole[:count, count:] = fresh[:, :count].T
+    return Moments(
+        keys, source.n_rows, tuple(final), tuple(int(t) for t in top),
+        np.concatenate([old_sums, sums * up_new[count:]]), whole, {key: p for p, key in enumerate(keys)},
+    )  # fmt: skip
+
+
+def _tops(source: Source, keys: tuple[Key, ...]) -> list[int]:
+    """Exponents above columns; 0 above a column of zeros."""
     top = np.full(len(keys), ZERO_EXPONENT, dtype=np.int64)
     for block in _blocks(source, keys):
         top = np.maximum(top, exponents_of(block))
-    top = np.where(top == ZERO_EXPONENT, 0, top)
-    count, k, m = len(old.keys), len(keys), len(new)
+    return [0 if t == ZERO_EXPONENT else int(t) for t in top]
+
+
+def _added_up(
+    source: Source, keys: tuple[Key, ...], count: int, top: NDArray[np.int64]
+) -> tuple[Integers, Integers, int]:
+    """Sums of the columns from ``count`` on, their products with all columns, and the depth of the slices.
+
+    Both are counted in units of ``2**(top - BITS * depth)``.
+    """
+    k, m = len(keys), len(keys) - count
     totals: dict[tuple[int, int], Any] = {}
     sums: dict[int, Any] = {}
     running: dict[tuple[int, int], NDArray[np.int64]] = {}
@@ -253,37 +287,38 @@ def _extended(old: Moments, source: Source, new: tuple[Key, ...]) -> Moments:
         running.clear()
         running_sums.clear()
 
+    slicer = Slicer(_block_rows(source.n_rows, len(keys)), top)
     for number, block in enumerate(_blocks(source, keys)):
-        slices = sliced(block, top)
-        for i, one in enumerate(slices):
-            s = one[:, count:].sum(axis=0).astype(np.int64)
-            running_sums[i] = running_sums[i] + s if i in running_sums else s
-            for j, other in enumerate(slices):
-                product = (one[:, count:].T @ other).astype(np.int64)
-                running[(i, j)] = running[(i, j)] + product if (i, j) in running else product
+        # All slices of all columns side by side, without those of zeros: one product for the block.
+        alive = [one.places for one in slicer.cut(block)]
+        stack = slicer.stack[: len(block)]
+        if count:
+            fresh = [places >= count for places in alive]
+            left = stack[:, np.concatenate(fresh)]
+            alive_left = [places[new] - count for places, new in zip(alive, fresh, strict=True)]
+        else:
+            left, alive_left = stack, alive
+        product = (left.T @ stack).astype(np.int64)
+        added = left.sum(axis=0).astype(np.int64)
+        starts = np.cumsum([0, *map(len, alive)])
+        starts_left = np.cumsum([0, *map(len, alive_left)])
+        for i, rows in enumerate(alive_left):
+            if not len(rows):
+                continue
+            own = slice(starts_left[i], starts_left[i + 1])
+            running_sums.setdefault(i, np.zeros(m, dtype=np.int64))[rows] += added[own]
+            for j, columns in enumerate(alive):
+                if len(columns):
+                    held = running.setdefault((i, j), np.zeros((m, k), dtype=np.int64))
+                    held[np.ix_(rows, columns)] += product[own, starts[j] : starts[j + 1]]
         if number % _FLUSH == _FLUSH - 1:
             flush()
     flush()
-    depth = max(sums, default=-1) + 1
-    units = [int(t) - BITS * depth for t in top]
+    depth = 1 + max((max(pair) for pair in totals), default=-1)
     total_products: Any = np.zeros((m, k), object)
     for (i, j), matrix in totals.items():
         total_products = total_products + matrix * (1 << (BITS * (2 * depth - 2 - i - j)))
     total_sums: Any = np.zeros(m, object)
     for i, vector in sums.items():
         total_sums = total_sums + vector * (1 << (BITS * (depth - 1 - i)))
-    # Columns that were held before keep their finer or coarser unit: bring both to the finer.
-    final = [min(unit, old.units[p]) if p < count else unit for p, unit in enumerate(units)]
-    up_new = np.array([1 << (units[p] - final[p]) for p in range(k)], object)
-    up_old = np.array([1 << (old.units[p] - final[p]) for p in range(count)], object)
-    products = np.zeros((k, k), object)
-    if count:
-        products[:count, :count] = old.products * up_old[:, None] * up_old[None, :]
-    fresh = total_products * up_new[count:][:, None] * up_new[None, :]
-    products[count:, :] = fresh
-    products[:count, count:] = fresh[:, :count].T
-    all_sums = np.concatenate([old.sums * up_old, total_sums * up_new[count:]])
-    return Moments(
-        keys, source.n_rows, tuple(final), tuple(int(t) for t in top), all_sums, products,
-        {key: p for p, key in enumerate(keys)},
-    )  # fmt: skip
+    return total_sums, total_products, depth
