@@ -83,16 +83,21 @@ def term_name(key: Key | None) -> str:
     return column_name(key)
 
 
-def transform_of(model: Model, key: Key | None) -> tuple[str | None, str | None, float | None, str | None]:
-    """Predictor, rung, exponent and level of a coefficient; None where it has none."""
+def owners_of(model: Model) -> list[str | None]:
+    """The predictor of each coefficient, in the order of a fit; None for the intercept."""
+    names: list[str | None] = [None] if model.intercept else []
+    return names + [term.name for term in model.terms for _ in term.keys]
+
+
+def transform_of(key: Key | None) -> tuple[str | None, float | None, str | None]:
+    """Rung, exponent and level of a coefficient; None where it has none."""
     if key is None:
-        return None, None, None, None
-    owner = next(term.name for term in model.terms if key in term.keys)
+        return None, None, None
     rungs = [factor for factor in key.factors if factor.rung != "identity"]
     rung = " × ".join(factor.rung for factor in rungs) if rungs else None
     exponent = next((factor.exponent for factor in rungs if factor.rung == "box_cox"), None)
     levels = [factor.level for factor in key.factors if factor.level]
-    return owner, rung, exponent, " × ".join(levels) if levels else None
+    return rung, exponent, " × ".join(levels) if levels else None
 
 
 def shown_exponent(transform: Transform) -> float | None:
@@ -103,7 +108,8 @@ def shown_exponent(transform: Transform) -> float | None:
 def _term(coefficient: Coefficient, trail: Trail, final: Fitted, adjusted: dict[str, float]) -> AnswerTerm:
     """One coefficient with its interval at 1 - alpha and its standardized size."""
     fit, model = final.fit, final.model
-    predictor, rung, exponent, level = transform_of(model, coefficient.key)
+    predictor = next((term.name for term in model.terms if coefficient.key in term.keys), None)
+    rung, exponent, level = transform_of(coefficient.key)
     half = coefficient.standard_error * float(stdtrit(fit.df_inference, 1.0 - trail.plan.alpha / 2.0))
     standardized = None
     if coefficient.key is not None:

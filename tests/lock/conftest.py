@@ -297,5 +297,12 @@ def lock() -> Lock:
                 **{**body, "rows_removed": (), "status": "inconclusive"},
             )
         },
-        environment=Environment(beforehand="0.1.0", python="3.11.9", numpy="2.4.0", scipy="1.17.0"),
+        environment=Environment(
+            beforehand="0.1.0",
+            python="3.11.9",
+            numpy="2.4.0",
+            scipy="1.17.0",
+            pandas="3.1.1",
+            statsmodels="0.15.0",
+        ),
     )

@@ -6,7 +6,7 @@ ladder, or the indicator of one level of a category. Nothing here holds numbers 
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Protocol
 
 import numpy as np
@@ -53,6 +53,19 @@ class Key:
 
     factors: tuple[Factor, ...]
     centre: float | None = None
+    # Keys are looked up far more often than made.
+    _hash: int = field(init=False, repr=False, compare=False)
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "_hash", hash((self.factors, self.centre)))
+
+    def __hash__(self) -> int:
+        """The hash, taken once."""
+        return self._hash
+
+    def __reduce__(self) -> tuple[type[Key], tuple[object, ...]]:
+        """Made anew in another process, where text hashes otherwise."""
+        return Key, (self.factors, self.centre)
 
 
 class Source(Protocol):

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from fractions import Fraction
 
+import numpy as np
 from scipy.special import fdtrc, stdtr
 
 from beforehand.faults import NumericalError
@@ -63,14 +64,13 @@ def _fit_of(tableau: Tableau, blocks: Mapping[str, tuple[Key, ...]]) -> Fit:
     rss, tss = tableau.rss, tableau.tss
     exact = tableau.exact
     s2 = Fraction(0) if exact or df <= 0 else rss / df
-    coefficients: list[Coefficient] = []
+    keys: list[Key | None] = [None, *tableau.keys] if tableau.intercept else list(tableau.keys)
+    estimates, errors = _slopes(tableau, exact)
     if tableau.intercept:
-        se = square_root(s2) * float(tableau.constant_root())
-        coefficients.append(_coefficient(None, float(tableau.constant), se, df, exact))
-    for k, key in enumerate(tableau.keys):
-        variance = Fraction(0) if exact else s2 * tableau.inverse_diagonal(k)
-        coefficients.append(_coefficient(key, float(tableau.slope(k)), square_root(variance), df, exact))
-    tests = {name: _test(name, keys, tableau, coefficients, exact) for name, keys in blocks.items()}
+        estimates.insert(0, float(tableau.constant))
+        errors.insert(0, square_root(s2) * float(tableau.constant_root()))
+    coefficients = _tested(keys, estimates, errors, df, exact)
+    tests = _tests(tableau, blocks, coefficients[int(tableau.intercept) :], exact)
     r2 = float(1 - rss / tss) if tss else 0.0
     if exact:
         # Nothing is explained where nothing varies.
@@ -91,26 +91,68 @@ def _fit_of(tableau: Tableau, blocks: Mapping[str, tuple[Key, ...]]) -> Fit:
     )  # fmt: skip
 
 
-def _coefficient(key: Key | None, estimate: float, se: float, df: int, exact: bool) -> Coefficient:
-    if exact or se == 0.0:
-        return Coefficient(key=key, estimate=estimate, standard_error=se, t=None, p=None)
-    t = estimate / se
-    return Coefficient(key=key, estimate=estimate, standard_error=se, t=t, p=2.0 * float(stdtr(df, -abs(t))))
+def _slopes(tableau: Tableau, exact: bool) -> tuple[list[float], list[float]]:
+    """Coefficients and standard errors without the intercept's, each with one rounding."""
+    shifts = [tableau.shifts[-1] - shift for shift in tableau.shifts[:-1]]
+    slopes, roots = tableau.grid.solution(max(tableau.df, 1))
+    estimates = [_scaled(slope, shift) for slope, shift in zip(slopes, shifts, strict=True)]
+    if exact or tableau.df <= 0:
+        return estimates, [0.0] * len(estimates)
+    return estimates, [_scaled(root, shift) for root, shift in zip(roots, shifts, strict=True)]
 
 
-def _test(
-    name: str, keys: tuple[Key, ...], tableau: Tableau, coefficients: list[Coefficient], exact: bool
-) -> TermTest:
-    if not keys:
-        # A category with one level in these rows has no column, and nothing of it can be tested.
-        return TermTest(predictor=name, df=0, statistic=None, p=None, partial_f2=None)
-    gain, rss = tableau.gain(keys), max(int(tableau.matrix[-1, -1]), 0)
-    f2 = None if exact or rss == 0 else float(Fraction(gain, rss))
-    if len(keys) == 1:
-        own = next(c for c in coefficients if c.key == keys[0])
-        return TermTest(
-            predictor=name, df=1, statistic=None if own.t is None else abs(own.t), p=own.p, partial_f2=f2
+def _scaled(value: float, shift: int) -> float:
+    """``value * 2**shift``; what falls below the smallest double with all its digits has lost some."""
+    found = math.ldexp(value, shift)
+    if value and not abs(found) >= SMALLEST_ERROR:
+        raise Unrepresentable(_BEYOND)
+    return found
+
+
+def _tested(
+    keys: Sequence[Key | None], estimates: Sequence[float], errors: Sequence[float], df: int, exact: bool
+) -> list[Coefficient]:
+    """Coefficients with t and p, which an exact fit has not."""
+    if exact or df <= 0:
+        return [
+            Coefficient(key=key, estimate=estimate, standard_error=error, t=None, p=None)
+            for key, estimate, error in zip(keys, estimates, errors, strict=True)
+        ]
+    ratios = [
+        estimate / error if error else math.nan for estimate, error in zip(estimates, errors, strict=True)
+    ]
+    tails = 2.0 * stdtr(df, -np.abs(np.array(ratios)))
+    return [
+        Coefficient(
+            key=key, estimate=estimate, standard_error=error,
+            t=ratio if error else None, p=p if error else None,
         )
-    f = None if f2 is None else f2 * tableau.df / len(keys)
-    p = None if f is None else float(fdtrc(len(keys), tableau.df, f))
-    return TermTest(predictor=name, df=len(keys), statistic=f, p=p, partial_f2=f2)
+        for key, estimate, error, ratio, p in zip(
+            keys, estimates, errors, ratios, tails.tolist(), strict=True
+        )
+    ]  # fmt: skip
+
+
+def _tests(
+    tableau: Tableau, blocks: Mapping[str, tuple[Key, ...]], slopes: Sequence[Coefficient], exact: bool
+) -> dict[str, TermTest]:
+    """The test of each predictor: of its t for one column, of its block's F otherwise."""
+    own = {coefficient.key: coefficient for coefficient in slopes}
+    rss, df = tableau.residual, tableau.df
+    found: dict[str, TermTest] = {}
+    for name, keys in blocks.items():
+        if not keys:
+            # A category with one level in these rows has no column, and nothing of it can be tested.
+            found[name] = TermTest(predictor=name, df=0, statistic=None, p=None, partial_f2=None)
+            continue
+        if len(keys) == 1:
+            one = own[keys[0]]
+            f2 = None if one.t is None or rss == 0 else one.t * one.t / df
+            statistic = None if one.t is None else abs(one.t)
+            found[name] = TermTest(predictor=name, df=1, statistic=statistic, p=one.p, partial_f2=f2)
+            continue
+        f2 = None if exact or rss == 0 else tableau.gain(keys) / rss
+        f = None if f2 is None else f2 * df / len(keys)
+        p = None if f is None else float(fdtrc(len(keys), df, f))
+        found[name] = TermTest(predictor=name, df=len(keys), statistic=f, p=p, partial_f2=f2)
+    return found

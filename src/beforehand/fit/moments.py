@@ -100,7 +100,9 @@ class Moments:
         rows : FloatArray, shape (m, k)
             Values of rows that are in these moments, columns in the order of ``keys``.
         """
-        gone = moments_of(ArraySource({key: rows[:, place] for place, key in enumerate(self.keys)}), self.keys)
+        gone = moments_of(
+            ArraySource({key: rows[:, place] for place, key in enumerate(self.keys)}), self.keys
+        )
         units = [min(one, other) for one, other in zip(self.units, gone.units, strict=True)]
         sums, products = self._in_units(units)
         gone_sums, gone_products = gone._in_units(units)
@@ -306,11 +308,19 @@ def _added_up(
             if not len(rows):
                 continue
             own = slice(starts_left[i], starts_left[i + 1])
-            running_sums.setdefault(i, np.zeros(m, dtype=np.int64))[rows] += added[own]
+            held_sums = running_sums.setdefault(i, np.zeros(m, dtype=np.int64))
+            held_sums[rows] += added[own]
             for j, columns in enumerate(alive):
-                if len(columns):
-                    held = running.setdefault((i, j), np.zeros((m, k), dtype=np.int64))
-                    held[np.ix_(rows, columns)] += product[own, starts[j] : starts[j + 1]]
+                if not len(columns):
+                    continue
+                held = running.get((i, j))
+                if held is None:
+                    held = running[(i, j)] = np.zeros((m, k), dtype=np.int64)
+                part = product[own, starts[j] : starts[j + 1]]
+                if part.shape == held.shape:
+                    held += part
+                else:
+                    held[np.ix_(rows, columns)] += part
         if number % _FLUSH == _FLUSH - 1:
             flush()
     flush()

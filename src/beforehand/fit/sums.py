@@ -37,9 +37,14 @@ def exact_sum(values: FloatArray) -> float:
     float
         The double nearest to the exact sum; 0.0 for none.
     """
-    return math.fsum(
-        part for start in range(0, len(values), BLOCK) for part in _parts(values[start : start + BLOCK])
-    )
+    if len(values) and not _largest(values) < LARGEST_SLICED:
+        return math.fsum(values.tolist())
+    rest, piece = (np.empty(min(BLOCK, len(values))) for _ in range(2))
+    parts: list[float] = []
+    for start in range(0, len(values), BLOCK):
+        block = values[start : start + BLOCK]
+        parts += _parts(block, rest[: len(block)], piece[: len(block)])
+    return math.fsum(parts)
 
 
 def exact_mean(values: FloatArray) -> float:
@@ -72,23 +77,35 @@ def sums_by_group(values: FloatArray, groups: NDArray[np.intp], count: int) -> F
 def _slices(values: FloatArray) -> Iterator[FloatArray]:
     """Pieces that add up to ``values`` exactly, each of which sums exactly in any order."""
     rest = values
-    room = math.ceil(math.log2(len(values) + 2)) if len(values) else 0
     while len(rest):
-        largest = max(float(rest.max()), -float(rest.min()))
-        if largest == 0.0:
+        cutter = _cutter(rest)
+        if cutter == 0.0:
             return
-        # |value| <= 2^exponent, so that with this cutter the piece is a multiple of 2^-53 of it and
-        # the sum of all pieces stays at most the cutter itself: 53 bits, no rounding.
-        cutter = math.ldexp(1.0, math.frexp(largest)[1] + room)
         piece = (rest + cutter) - cutter
         yield piece
         rest = rest - piece
 
 
-def _parts(block: FloatArray) -> Iterator[float]:
-    """Doubles whose exact sum is that of the block."""
-    if len(block) and not max(float(block.max()), -float(block.min())) < LARGEST_SLICED:
-        yield from block.tolist()
-        return
-    for piece in _slices(block):
+def _parts(block: FloatArray, rest: FloatArray, piece: FloatArray) -> Iterator[float]:
+    """Sums of the slices of a block, made in two arrays of its length."""
+    rest[...] = block
+    while cutter := _cutter(rest):
+        np.add(rest, cutter, out=piece)
+        piece -= cutter
+        rest -= piece
         yield float(piece.sum())
+
+
+def _cutter(values: FloatArray) -> float:
+    """What cuts the next slice off by adding and taking away; 0.0 when nothing is left."""
+    largest = _largest(values)
+    if largest == 0.0:
+        return 0.0
+    # |value| <= 2^exponent, so that with this cutter the piece is a multiple of 2^-53 of it and
+    # the sum of all pieces stays at most the cutter itself: 53 bits, no rounding.
+    return math.ldexp(1.0, math.frexp(largest)[1] + math.ceil(math.log2(len(values) + 2)))
+
+
+def _largest(values: FloatArray) -> float:
+    """The largest size among values."""
+    return max(float(values.max()), -float(values.min()))

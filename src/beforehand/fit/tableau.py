@@ -4,13 +4,14 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 
 import numpy as np
 from scipy.special import stdtr
 
 from beforehand.fit.columns import FloatArray, Key
+from beforehand.fit.grids import Grid, Whole, paired
 from beforehand.fit.moments import Integers, Moments
 from beforehand.fit.sweeping import (
     BITS,
@@ -42,7 +43,7 @@ class Tableau:
     """A model swept in: inverse, coefficients and residual sum of squares in fixed point.
 
     The last row and column are the outcome's. Cross-products about the mean (or 0) are
-    ``matrix[i, j] * 2**(shifts[i] + shifts[j]) / n``, as fixed-point numbers of ``BITS`` bits.
+    ``grid[i, j] * 2**(shifts[i] + shifts[j]) / n``, as fixed-point numbers of ``BITS`` bits.
 
     Attributes
     ----------
@@ -53,9 +54,13 @@ class Tableau:
     intercept : bool
     shifts : tuple of int, length k + 1
         Scale of each column, the outcome's last.
-    matrix : integers, shape (k + 1, k + 1)
+    grid : Grid, k + 1 rows and columns
     total : int
         The outcome's own entry before the first sweep.
+    means : tuple of int, length k
+        Means of the columns in fixed point, in the grid's scale.
+    spread : int
+        ``means' C means`` of the inverse C, in the same scale: what the intercept owes to the columns.
     """
 
     moments: Moments
@@ -63,8 +68,20 @@ class Tableau:
     keys: tuple[Key, ...]
     intercept: bool
     shifts: tuple[int, ...]
-    matrix: Integers
+    grid: Grid
     total: int
+    means: tuple[int, ...]
+    spread: int
+
+    @property
+    def matrix(self) -> Integers:
+        """The grid as integers, shape (k + 1, k + 1)."""
+        return self.grid.integers()
+
+    @property
+    def residual(self) -> int:
+        """The outcome's own entry: the residual sum of squares in the grid's scale."""
+        return max(self.grid.entry(-1, -1), 0)
 
     @property
     def n(self) -> int:
@@ -84,7 +101,7 @@ class Tableau:
     @property
     def rss(self) -> Fraction:
         """Residual sum of squares."""
-        return self._squares(int(self.matrix[-1, -1]))
+        return self._squares(self.residual)
 
     @property
     def tss(self) -> Fraction:
@@ -97,13 +114,11 @@ class Tableau:
     @property
     def exact(self) -> bool:
         """Whether the residuals are no more than rounding of the table."""
-        rss, total = max(int(self.matrix[-1, -1]), 0), self.total
-        tolerance = Fraction(EXACT_FIT_TOLERANCE) ** 2
-        return rss <= tolerance * total
+        return self.residual <= Fraction(EXACT_FIT_TOLERANCE) ** 2 * self.total
 
     def slope(self, place: int) -> Fraction:
         """A coefficient."""
-        return scaled(int(self.matrix[place, -1]), self.shifts[-1] - self.shifts[place])
+        return scaled(self.grid.entry(place, -1), self.shifts[-1] - self.shifts[place])
 
     @property
     def estimates(self) -> tuple[float, ...]:
@@ -115,8 +130,8 @@ class Tableau:
         """The intercept; 0 without one."""
         if not self.intercept:
             return Fraction(0)
-        slopes = self.matrix[: len(self.keys), -1].tolist()
-        carried = sum(slope * mean for slope, mean in zip(slopes, self._scaled_means(), strict=True))
+        slopes = self.grid.column(-1)[:-1]
+        carried = sum(slope * mean for slope, mean in zip(slopes, self.means, strict=True))
         return self._mean(self.outcome) - power(Fraction(carried, ONE * ONE), self.shifts[-1])
 
     def _mean(self, key: Key) -> Fraction:
@@ -133,7 +148,7 @@ class Tableau:
 
     def _inverse_entry(self, i: int, j: int) -> int:
         """An entry of the inverse in fixed point, in the tableau's scale; it stands negated."""
-        return -int(self.matrix[i, j])
+        return -self.grid.entry(i, j)
 
     def inverse_roots(self) -> tuple[Fraction, ...]:
         """Roots of the diagonal of the inverse cross-products, one for each slope."""
@@ -188,19 +203,9 @@ class Tableau:
             constants = [Fraction(1, self.n) / root + about, *constants]
         return weights, constants
 
-    def _scaled_means(self) -> list[int]:
-        """Means of the columns in fixed point, in the tableau's scale."""
-        return [fixed_of(self._mean(key), -shift) for key, shift in zip(self.keys, self.shifts, strict=False)]
-
     def constant_root(self) -> Fraction:
         """Root of the intercept's entry in the inverse cross-products."""
-        k = len(self.keys)
-        means = self._scaled_means()
-        spread = 0
-        if k:
-            line = np.array(means, object)
-            spread = -int((line * ((self.matrix[:k, :k] * line[None, :]).sum(axis=1) >> BITS)).sum() >> BITS)
-        return Fraction(square_root(Fraction(spread * self.n + ONE // self.n, ONE)))
+        return Fraction(square_root(Fraction(self.spread * self.n + ONE // self.n, ONE)))
 
     def whitening(self) -> tuple[list[list[Fraction]], list[Fraction]]:
         """Weights and constants of forms that make the columns orthonormal.
@@ -233,24 +238,32 @@ class Tableau:
 
     def without(self, keys: Sequence[Key]) -> Tableau:
         """The model less some of its columns, swept out in the order given."""
-        matrix = self.matrix
-        gone = [self.keys.index(key) for key in keys]
-        for place in gone:
-            matrix = swept(matrix, place, out=True)
-        stay = [k for k in range(len(self.keys) + 1) if k not in gone]
-        return Tableau(
-            self.moments, self.outcome, tuple(self.keys[k] for k in stay[:-1]), self.intercept,
-            tuple(self.shifts[k] for k in stay), matrix[np.ix_(stay, stay)], self.total,
+        grid, left, means, spread = self.grid, list(self.keys), list(self.means), self.spread
+        for key in keys:
+            place = left.index(key)
+            # The inverse loses c c' / c_jj, and the form of the means with it.
+            column = grid.column(place)
+            joint = sum(one * mean for one, mean in zip(column[:-1], means, strict=True)) >> BITS
+            spread += joint * joint // column[place]
+            grid = grid.without(place)
+            del left[place], means[place]
+        stay = [place for place, key in enumerate(self.keys) if key not in set(keys)]
+        return replace(
+            self, keys=tuple(left), shifts=(*(self.shifts[k] for k in stay), self.shifts[-1]), grid=grid,
+            means=tuple(means), spread=spread,
         )  # fmt: skip
 
     def gain(self, keys: Sequence[Key]) -> int:
         """What leaving columns out adds to the residual sum of squares, in units of the tableau."""
-        places = [*(self.keys.index(key) for key in keys), len(self.keys)]
-        inner = self.matrix[np.ix_(places, places)]
-        before = int(inner[-1, -1])
-        for place in range(len(keys)):
-            inner = swept(inner, place, out=True)
-        return int(inner[-1, -1]) - before
+        places = [self.keys.index(key) for key in keys]
+        if len(places) == 1:
+            slope = self.grid.entry(places[0], -1)
+            return -(slope * slope // self.grid.entry(places[0], places[0]))
+        inner: Grid = Whole(self.grid.part([*places, len(self.keys)]).integers())
+        before = inner.entry(-1, -1)
+        for _ in places:
+            inner = inner.without(0)
+        return inner.entry(-1, -1) - before
 
 
 def tableau_of(moments: Moments, outcome: Key, keys: Sequence[Key], *, intercept: bool) -> Tableau:
@@ -277,11 +290,15 @@ def tableau_of(moments: Moments, outcome: Key, keys: Sequence[Key], *, intercept
     everything = (*keys, outcome)
     matrix, shifts, lengths = start(moments, everything, intercept)
     total = int(matrix[-1, -1])
-    for k in range(len(keys)):
-        if vanishes(int(matrix[k, k]), lengths[k]):
-            raise RankDeficient(f"column {k + 1} of the model is an exact combination of the others")
-        matrix = swept(matrix, k)
-    return Tableau(moments, outcome, tuple(keys), intercept, shifts, matrix, total)
+    means = tuple(fixed_of(mean_of(moments, key), -shift) for key, shift in zip(keys, shifts, strict=False))
+    grid: Grid | None = paired(matrix, len(keys))
+    if grid is None:
+        for k in range(len(keys)):
+            if vanishes(int(matrix[k, k]), lengths[k]):
+                raise RankDeficient(f"column {k + 1} of the model is an exact combination of the others")
+            matrix = swept(matrix, k)
+        grid = Whole(matrix)
+    return Tableau(moments, outcome, tuple(keys), intercept, shifts, grid, total, means, -grid.form(means))
 
 
 def added_column_test(
@@ -317,21 +334,20 @@ def added_column_test(
         fixed(int(v), moments.units[p] + moments.units[places[-1]] - s - shift)
         for v, p, s in zip(line[:-1], places[:-1], tableau.shifts, strict=True)
     ]
-    k = len(tableau.keys)
+    k, whole = len(tableau.keys), tableau.matrix
     # The inverse stands negated in the tableau.
     weighed = [
-        sum(int(a) * b for a, b in zip(row, scaled[:-1], strict=True)) >> BITS
-        for row in tableau.matrix[:k, :k]
+        sum(int(a) * b for a, b in zip(row, scaled[:-1], strict=True)) >> BITS for row in whole[:k, :k]
     ]
     own_fixed = fixed(own, 2 * (moments.units[places[-1]] - shift))
     pivot = own_fixed + (sum(a * b for a, b in zip(weighed, scaled[:-1], strict=True)) >> BITS)
     raw = moments.n * int(moments.products[places[-1], places[-1]])
     if df < 1 or tableau.exact or vanishes(pivot, fixed(raw, 2 * (moments.units[places[-1]] - shift))):
         return None
-    slopes = [int(v) for v in tableau.matrix[:k, -1]]
+    slopes = [int(v) for v in whole[:k, -1]]
     joint = scaled[-1] - (sum(a * b for a, b in zip(slopes, scaled[:-1], strict=True)) >> BITS)
     gain = Fraction(joint * joint, pivot * ONE)
-    rest = Fraction(int(tableau.matrix[-1, -1]), ONE) - gain
+    rest = Fraction(tableau.residual, ONE) - gain
     if rest <= Fraction(EXACT_FIT_TOLERANCE) ** 2 * Fraction(tableau.total, ONE):
         return None
     t = math.copysign(square_root(gain / (rest / df)), joint)

@@ -7,7 +7,7 @@ from typing import Literal
 
 from pydantic import Field
 
-from beforehand.lock.record import CheckId, Count, FitId, Name, Record, RulingId
+from beforehand.lock.record import CheckId, Count, Figure, FitId, Name, Record, RulingId
 
 
 class Descriptive(Record):
@@ -18,15 +18,15 @@ class Descriptive(Record):
     unit: str | None = Field(description="Its unit.")
     n: Count = Field(description="Values present.")
     missing: Count = Field(description="Values missing.")
-    mean: float | None = Field(description="Mean.")
-    sd: float | None = Field(description="Standard deviation, with n - 1.")
-    minimum: float | None = Field(description="Smallest value.")
-    lower_quartile: float | None = Field(description="Lower quartile.")
-    median: float | None = Field(description="Median.")
-    upper_quartile: float | None = Field(description="Upper quartile.")
-    maximum: float | None = Field(description="Largest value.")
-    skewness: float | None = Field(description="Skewness.")
-    kurtosis: float | None = Field(description="Kurtosis.")
+    mean: Figure | None = Field(description="Mean.")
+    sd: Figure | None = Field(description="Standard deviation, with n - 1.")
+    minimum: Figure | None = Field(description="Smallest value.")
+    lower_quartile: Figure | None = Field(description="Lower quartile.")
+    median: Figure | None = Field(description="Median.")
+    upper_quartile: Figure | None = Field(description="Upper quartile.")
+    maximum: Figure | None = Field(description="Largest value.")
+    skewness: Figure | None = Field(description="Skewness.")
+    kurtosis: Figure | None = Field(description="Kurtosis.")
     levels: Mapping[Name, Count] = Field(description="Rows of each level of a category.")
 
 
@@ -35,9 +35,9 @@ class MissingRecord(Record):
 
     predictor: str = Field(description="Name of the predictor.")
     missing: Count = Field(description="Cells missing among rows with an outcome.")
-    share: float = Field(description="Their share.")
+    share: Figure = Field(description="Their share.")
     rows_left: Count = Field(description="Rows that left for it.")
-    standardized_difference: float | None = Field(
+    standardized_difference: Figure | None = Field(
         description="Difference of the rows that left from those that stayed, in standard deviations."
     )
 
@@ -47,7 +47,7 @@ class FillRecord(Record):
 
     predictor: str = Field(description="Name of the predictor.")
     method: str = Field(description="How they were filled.")
-    value: float | str | None = Field(description="The value, where there is one.")
+    value: Figure | str | None = Field(description="The value, where there is one.")
     cells: Count = Field(description="How many.")
 
 
@@ -57,7 +57,7 @@ class Correlation(Record):
     stage: str = Field(description="Stage of the run.")
     first: str = Field(description="Predictor earlier in the plan.")
     second: str = Field(description="Predictor later in the plan.")
-    r: float | None = Field(description="Correlation coefficient.")
+    r: Figure | None = Field(description="Correlation coefficient.")
 
 
 class Inflation(Record):
@@ -65,15 +65,15 @@ class Inflation(Record):
 
     stage: str = Field(description="Stage of the run.")
     predictor: str = Field(description="Name of the predictor.")
-    vif: float | None = Field(description="VIF, or for a block the generalized VIF to the power 1/df.")
+    vif: Figure | None = Field(description="VIF, or for a block the generalized VIF to the power 1/df.")
 
 
 class Condition(Record):
     """One condition index with its variance shares (Belsley, Kuh, Welsch 1980)."""
 
     stage: str = Field(description="Stage of the run.")
-    index: float | None = Field(description="Condition index.")
-    shares: Mapping[Name, float] = Field(description="Share of each coefficient's variance.")
+    index: Figure | None = Field(description="Condition index.")
+    shares: Mapping[Name, Figure] = Field(description="Share of each coefficient's variance.")
 
 
 class AssumptionCheck(Record):
@@ -84,10 +84,10 @@ class AssumptionCheck(Record):
     check: str = Field(description="Name of the check.")
     subject: str | None = Field(description="Predictor it is about; null for the model.")
     fit: FitId | None = Field(description="Fit that is checked.")
-    statistic: float | None = Field(description="Its statistic.")
+    statistic: Figure | None = Field(description="Its statistic.")
     df: tuple[int, ...] = Field(description="Degrees of freedom, where it has any.")
-    p: float | None = Field(description="Its p.")
-    alpha: float | None = Field(description="Level against which p is held.")
+    p: Figure | None = Field(description="Its p.")
+    alpha: Figure | None = Field(description="Level against which p is held.")
     verdict: Literal["passed", "failed", "not_applicable"] = Field(description="What came out.")
     because: str | None = Field(description="Why it could not be made.")
 
@@ -97,12 +97,12 @@ class InfluenceRow(Record):
 
     row: str = Field(description="Label of the row.")
     ruling: RulingId | None = Field(description="Ruling about it.")
-    leverage: float | None = Field(description="Leverage.")
-    studentized_residual: float | None = Field(description="Externally studentized residual.")
-    cooks_distance: float | None = Field(description="Cook's distance.")
-    dffits: float | None = Field(description="DFFITS.")
-    change_r_squared: float | None = Field(description="Change of R² without it.")
-    change_coefficient: float | None = Field(
+    leverage: Figure | None = Field(description="Leverage.")
+    studentized_residual: Figure | None = Field(description="Externally studentized residual.")
+    cooks_distance: Figure | None = Field(description="Cook's distance.")
+    dffits: Figure | None = Field(description="DFFITS.")
+    change_r_squared: Figure | None = Field(description="Change of R² without it.")
+    change_coefficient: Figure | None = Field(
         description="Largest change of a coefficient without it, in standard errors of the fit with it."
     )
     of: str | None = Field(description="The coefficient that changes most.")
@@ -116,8 +116,8 @@ class JointComparison(Record):
 
     rows: Count = Field(description="How many rows.")
     fit: FitId = Field(description="The fit without them.")
-    change_r_squared: float | None = Field(description="Change of R² without them.")
-    change_coefficient: float | None = Field(
+    change_r_squared: Figure | None = Field(description="Change of R² without them.")
+    change_coefficient: Figure | None = Field(
         description="Largest change of a coefficient without them, in standard errors of the fit with them."
     )
     of: str | None = Field(description="The coefficient that changes most.")

@@ -72,6 +72,8 @@ class Environment(Record):
     python: str = Field(description="Version of Python.")
     numpy: str = Field(description="Version of numpy.")
     scipy: str = Field(description="Version of scipy.")
+    pandas: str = Field(description="Version of pandas.")
+    statsmodels: str = Field(description="Version of statsmodels.")
 
 
 class Lock(Record):

@@ -8,6 +8,7 @@ from typing import Annotated, Any, ClassVar
 from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field
 from typing_extensions import TypeAliasType
 
+from beforehand.lock.numbers import as_recorded
 from beforehand.lock.strings import string_text
 
 # A key of YAML on one line may have 1024 characters as written.
@@ -40,6 +41,9 @@ def _tuples(value: Any) -> Any:
     return str(value) if isinstance(value, str) else value
 
 
+# A computed number, as it is recorded: to ten digits.
+Figure = Annotated[float, AfterValidator(as_recorded)]
+
 Name = Annotated[str, AfterValidator(_short_enough)]
 Count = Annotated[int, Field(ge=0)]
 Digest = Annotated[str, Field(pattern=r"^sha256:[0-9a-f]{16,64}$")]
@@ -47,6 +51,6 @@ FitId = Annotated[str, Field(pattern=r"^F[0-9]{3,}$")]
 RulingId = Annotated[str, Field(pattern=r"^R[0-9]{3,}$")]
 CheckId = Annotated[str, Field(pattern=r"^C[0-9]{3,}$")]
 
-Scalar = bool | int | float | str | None
+Scalar = bool | int | Figure | str | None
 Plain = TypeAliasType("Plain", "bool | int | float | str | tuple[Plain, ...] | dict[Name, Plain] | None")
 PlainData = Annotated[Mapping[Name, Plain], BeforeValidator(_tuples)]

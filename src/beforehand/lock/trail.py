@@ -7,7 +7,7 @@ from typing import ClassVar, Literal
 
 from pydantic import Field
 
-from beforehand.lock.record import CheckId, Count, Digest, FitId, Name, Record, RulingId, Scalar
+from beforehand.lock.record import CheckId, Count, Digest, Figure, FitId, Name, Record, RulingId, Scalar
 
 
 class LedgerStage(Record):
@@ -34,7 +34,7 @@ class PredictorFate(Record):
     )
     ruling: RulingId | None = Field(description="The ruling that decided it.")
     transform: str | None = Field(description="Rung of the ladder under which it stands or stood.")
-    exponent: float | None = Field(description="Learned exponent of a Box-Cox power.")
+    exponent: Figure | None = Field(description="Learned exponent of a Box-Cox power.")
     says: str = Field(description="The same in a sentence.")
 
 
@@ -48,8 +48,8 @@ class RulingRecord(Record):
     fits: tuple[FitId, ...] = Field(description="Fits on which it rests.")
     checks: tuple[CheckId, ...] = Field(description="Checks on which it rests.")
     evidence: Mapping[Name, Scalar] = Field(description="Named numbers of the evidence.")
-    limit: float | None = Field(description="The limit in the plan.")
-    margin: float | None = Field(description="Distance of the evidence from the limit.")
+    limit: Figure | None = Field(description="The limit in the plan.")
+    margin: Figure | None = Field(description="Distance of the evidence from the limit.")
     knife_edge: bool = Field(description="Whether the margin is within the rounding of the evidence.")
     verdict: str = Field(description="What was decided, in one word such as keep, remove, transform or stop.")
     ground: str = Field(description="The ground on which it was decided, as a code.")
@@ -69,7 +69,7 @@ class FitOutcome(Record):
 
     column: str = Field(description="Column of the outcome.")
     transform: str = Field(description="Rung of the ladder; identity for none.")
-    exponent: float | None = Field(description="Learned exponent of a Box-Cox power.")
+    exponent: Figure | None = Field(description="Learned exponent of a Box-Cox power.")
 
 
 class FitTerm(Record):
@@ -82,12 +82,12 @@ class FitTerm(Record):
     transform: str | None = Field(
         default=None, description="Rung of the ladder under which the predictor stands."
     )
-    exponent: float | None = Field(default=None, description="Learned exponent of a Box-Cox power.")
+    exponent: Figure | None = Field(default=None, description="Learned exponent of a Box-Cox power.")
     level: str | None = Field(default=None, description="Level of a category whose indicator this is.")
-    coefficient: float = Field(description="Estimate, in units of the fitted outcome per unit of the term.")
-    standard_error: float | None = Field(description="Standard error by the errors of the fit.")
-    t: float | None = Field(description="Coefficient over its standard error.")
-    p: float | None = Field(description="Two-sided p of t.")
+    coefficient: Figure = Field(description="Estimate, in units of the fitted outcome per unit of the term.")
+    standard_error: Figure | None = Field(description="Standard error by the errors of the fit.")
+    t: Figure | None = Field(description="Coefficient over its standard error.")
+    p: Figure | None = Field(description="Two-sided p of t.")
 
 
 class FitTest(Record):
@@ -95,8 +95,8 @@ class FitTest(Record):
 
     predictor: str = Field(description="Name of the predictor.")
     df: Count = Field(description="Columns it takes in the design.")
-    statistic: float | None = Field(description="|t| for one column, partial F for a block.")
-    p: float | None = Field(description="p of the statistic.")
+    statistic: Figure | None = Field(description="|t| for one column, partial F for a block.")
+    p: Figure | None = Field(description="p of the statistic.")
 
 
 class FitRecord(Record):
@@ -110,12 +110,12 @@ class FitRecord(Record):
     errors: str = Field(description="Kind of standard errors.")
     terms: tuple[FitTerm, ...] = Field(description="Coefficients, the intercept first.")
     tests: tuple[FitTest, ...] = Field(description="Predictors judged as a whole.")
-    r_squared: float | None = Field(description="Share of variance explained.")
-    adjusted_r_squared: float | None = Field(description="R² adjusted for the number of coefficients.")
-    residual_sd: float | None = Field(description="Residual standard deviation.")
-    f: float | None = Field(description="F of the test that all slopes are zero.")
+    r_squared: Figure | None = Field(description="Share of variance explained.")
+    adjusted_r_squared: Figure | None = Field(description="R² adjusted for the number of coefficients.")
+    residual_sd: Figure | None = Field(description="Residual standard deviation.")
+    f: Figure | None = Field(description="F of the test that all slopes are zero.")
     f_df: tuple[int, int] | None = Field(description="Degrees of freedom of F.")
-    f_p: float | None = Field(description="p of F.")
-    aic: float | None = Field(description="Akaike's criterion.")
-    bic: float | None = Field(description="Schwarz's criterion.")
+    f_p: Figure | None = Field(description="p of F.")
+    aic: Figure | None = Field(description="Akaike's criterion.")
+    bic: Figure | None = Field(description="Schwarz's criterion.")
     exact: bool = Field(description="Whether the residuals vanish to the precision of the table.")

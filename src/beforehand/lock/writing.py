@@ -18,7 +18,7 @@ from beforehand.lock.answer import Answer, Fragility
 from beforehand.lock.checks import Checks
 from beforehand.lock.files import write_whole
 from beforehand.lock.models import Alternative, DataRecord, Environment, Lock, PlanRecord, SealRecord
-from beforehand.lock.numbers import as_recorded, exact_text, number_text
+from beforehand.lock.numbers import exact_text, number_text
 from beforehand.lock.record import Plain, Record
 from beforehand.lock.strings import string_text
 from beforehand.lock.trail import FitRecord, PredictorFate, RulingRecord
@@ -79,11 +79,9 @@ def sealed_lock(lock: Lock) -> Lock:
     Returns
     -------
     Lock
-        The same with its digest, and with every computed number as it is recorded.
+        The same with its digest.
     """
-    digest = digest_of(covered_text(lock).encode())
-    recorded: Lock = _recorded(lock)
-    return recorded.model_copy(update={"digest": digest})
+    return lock.model_copy(update={"digest": digest_of(covered_text(lock).encode())})
 
 
 def covered_text(lock: Lock) -> str:
@@ -164,7 +162,13 @@ def _flow(value: Any, formats: Mapping[type, Format] = _COMPUTED) -> str:
                 n for n, item in enumerate(values) if item is not None or names[n] not in value.left_out
             ]
             names, values = tuple([names[n] for n in present]), [values[n] for n in present]
-        return _template(names) % tuple([_flow(item) for item in values])
+        # Scalars are most of what a lock holds: they are written here, without another call.
+        return _template(names) % tuple(
+            [
+                write(item) if (write := formats.get(type(item))) is not None else _flow(item)
+                for item in values
+            ]
+        )
     if isinstance(value, Mapping):
         entries = [f"{string_text(key)}: {_flow(item, formats)}" for key, item in value.items()]
         return "{" + ", ".join(entries) + "}"
@@ -207,26 +211,6 @@ def _item(item: Any, indent: str) -> Iterator[str]:
         yield from lines
     else:
         yield f"{indent}- {_flow(item)}"
-
-
-def _recorded(value: Any) -> Any:
-    """Round every computed number to what reads back; the plan's own numbers are written exactly."""
-    kind = type(value)
-    if kind is float:
-        return as_recorded(value)
-    if kind in _COMPUTED:
-        return value
-    if isinstance(value, Record):
-        names, values_of = _fields_of(type(value))
-        return type(value).model_validate(
-            {
-                name: item if name in _WRITTEN_BY_HAND and isinstance(item, Mapping) else _recorded(item)
-                for name, item in zip(names, values_of(value), strict=True)
-            }
-        )
-    if isinstance(value, Mapping):
-        return {key: _recorded(item) for key, item in value.items()}
-    return tuple([_recorded(item) for item in value])
 
 
 def _holds_records(value: Mapping[str, Any]) -> bool:

@@ -20,7 +20,6 @@ from beforehand.lock import (
     JointComparison,
     MissingRecord,
 )
-from beforehand.plan import Plan
 from beforehand.running import Trail
 from beforehand.steps.bench import Checked
 from beforehand.steps.influence import InfluenceRecord, KeptRow
@@ -78,7 +77,7 @@ def checks_of(trail: Trail, labels: Labels) -> Checks:
             for index, shares in zip(one.condition.indices, one.condition.shares, strict=True)
         ),
         assumptions=tuple(_check(check) for check in record.checks),
-        influence=tuple(_influence_rows(influence, trail.plan, labels)) if influence else (),
+        influence=tuple(_influence_rows(influence, labels)) if influence else (),
         jointly_without_flagged=_joint(influence),
     )
 
@@ -131,11 +130,11 @@ def _descriptive(column: Column, unit: str | None, table: Table) -> Descriptive:
     )  # fmt: skip
 
 
-def _influence_rows(found: InfluenceRecord, plan: Plan, labels: Labels) -> Iterable[InfluenceRow]:
+def _influence_rows(found: InfluenceRecord, labels: Labels) -> Iterable[InfluenceRow]:
     """Rows that left, then flagged rows that stayed, as many one by one as the plan records."""
     for row, ruling in found.removed:
         yield _influence_row(row, ruling, labels, stays=False)
-    for row in found.kept[: plan.influence.record_at_most]:
+    for row in found.kept:
         yield _influence_row(row, found.kept_ruling, labels, stays=True)
 
 

@@ -5,13 +5,15 @@ from __future__ import annotations
 import hashlib
 import platform
 from collections.abc import Callable, Mapping
+from importlib.metadata import version
 from typing import Any
 
 import numpy as np
 import scipy
+from numpy.typing import NDArray
 
 from beforehand import wording
-from beforehand.answer import answer_of, shown_exponent, term_name, transform_of
+from beforehand.answer import answer_of, owners_of, shown_exponent, term_name, transform_of
 from beforehand.lock import (
     Alternative,
     Answer,
@@ -88,6 +90,9 @@ def lock_of(trail: Trail, alternatives: Mapping[str, Trail], *, file: str, label
             python=platform.python_version(),
             numpy=np.__version__,
             scipy=scipy.__version__,
+            # Asked of the installation, since importing either takes longer than most runs.
+            pandas=version("pandas"),
+            statsmodels=version("statsmodels"),
         ),
         digest="",
     )
@@ -211,8 +216,8 @@ def _fit(recorded: RecordedFit, trail: Trail, digests: _RowDigests) -> FitRecord
     """One fit with its coefficients and the test of each predictor."""
     fit, model = recorded.fit, recorded.model
     terms: list[FitTerm] = []
-    for coefficient in fit.coefficients:
-        predictor, rung, exponent, level = transform_of(model, coefficient.key)
+    for predictor, coefficient in zip(owners_of(model), fit.coefficients, strict=True):
+        rung, exponent, level = transform_of(coefficient.key)
         terms.append(
             FitTerm(
                 term=term_name(coefficient.key),
@@ -256,25 +261,28 @@ def _fit(recorded: RecordedFit, trail: Trail, digests: _RowDigests) -> FitRecord
 
 
 class _RowDigests:
-    """Digests of row sets: the sum of the rows' own digests, so that one row less is one subtraction."""
-
-    _MODULUS = 1 << 256
+    """Digests of row sets: of the labels of the rows in use, in canonical order, one to a line."""
 
     def __init__(self, trail: Trail, labels: Labels) -> None:
         self._source = trail.source
         self._labels = labels
-        self._total: int | None = None
+        self._lines: NDArray[np.object_] | None = None
         self._known: dict[Rows, str] = {}
 
     def of(self, rows: Rows) -> str:
         """The digest of a set of rows, whatever the order in which they are named."""
         known = self._known.get(rows)
         if known is None:
-            if self._total is None:
-                self._total = sum(map(self._row, self._source.labels()))
-            left = self._total - sum(self._row(self._source.label(position)) for position in rows.gone)
-            known = self._known[rows] = f"sha256:{left % self._MODULUS:064x}"
+            if self._lines is None:
+                self._lines = np.array(list(map(self._labels, self._source.labels())), dtype=object)
+            lines = self._lines if not rows.gone else np.delete(self._lines, rows.gone)
+            text = "\n".join(lines.tolist())
+            if "\\" in text or text.count("\n") >= max(1, len(lines)):
+                # A label with a line break in it is still one line.
+                text = "\n".join(_on_one_line(label) for label in lines.tolist())
+            known = self._known[rows] = f"sha256:{hashlib.sha256(text.encode()).hexdigest()}"
         return known
 
-    def _row(self, label: str) -> int:
-        return int.from_bytes(hashlib.sha256(self._labels(label).encode()).digest(), "big")
+
+def _on_one_line(label: str) -> str:
+    return label.replace("\\", "\\\\").replace("\n", "\\n")

@@ -30,19 +30,38 @@ def compared(
     """
     model = fitted.model
     owner = [term.name for term in model.terms for _ in term.keys]
-    significance = _significance_changes(fitted, found, alpha)
-    signs = _sign_changes(fitted, found, owner, alpha)
+    significance = _by_row(_significance_changes(fitted, found, alpha), len(positions))
+    signs = _by_row(_sign_changes(fitted, found, owner, alpha), len(positions))
+    columns = [column_name(key) for key in model.keys]
+    rows = zip(
+        positions.tolist(),
+        found.change_r_squared.tolist(),
+        found.change_coefficient.tolist(),
+        found.column.tolist(),
+        significance,
+        signs,
+        strict=True,
+    )
     return tuple(
         Comparison(
             position=position,
-            change_r_squared=float(found.change_r_squared[at]),
-            change_coefficient=float(found.change_coefficient[at]),
-            of=column_name(model.keys[int(found.column[at])]),
-            significance_changes=tuple(name for name, changes in significance.items() if changes[at]),
-            sign_changes=tuple(name for name, changes in signs.items() if changes[at]),
+            change_r_squared=change_r_squared,
+            change_coefficient=change_coefficient,
+            of=columns[column],
+            significance_changes=significant,
+            sign_changes=turned,
         )
-        for at, position in enumerate(positions.tolist())
+        for position, change_r_squared, change_coefficient, column, significant, turned in rows
     )
+
+
+def _by_row(changes: Mapping[str, NDArray[np.bool_]], rows: int) -> list[tuple[str, ...]]:
+    """For each row, the predictors in which leaving it out changes something."""
+    found: list[tuple[str, ...]] = [()] * rows
+    for name, changed in changes.items():
+        for row in np.flatnonzero(changed).tolist():
+            found[row] = (*found[row], name)
+    return found
 
 
 def _significance_changes(

@@ -25,6 +25,7 @@ class Designer:
         self._plan = plan
         self._source = source
         self._categories = {p.column: p for p in plan.predictors if p.kind == "category"}
+        self._numbers: dict[tuple[str, Transform], Term] = {}
         self._codes: dict[str, NDArray[np.int64]] = {}
         self._levels: dict[tuple[str, Rows], tuple[str, ...]] = {}
         self._combinations: dict[tuple[tuple[str, ...], Rows], frozenset[tuple[int, ...]]] = {}
@@ -76,8 +77,12 @@ class Designer:
     def _plain(self, name: str, state: State) -> Term:
         """A number under its transform, or the indicators of a category."""
         if name not in self._categories:
-            factor = factor_of(name, state.transforms.get(name, IDENTITY))
-            return Term(name=name, keys=(Key((factor,)),))
+            transform = state.transforms.get(name, IDENTITY)
+            known = self._numbers.get((name, transform))
+            if known is None:
+                known = Term(name=name, keys=(Key((factor_of(name, transform),)),))
+                self._numbers[(name, transform)] = known
+            return known
         levels = self.levels_in_use(name, state.rows)
         # Without an intercept the first category keeps all its levels, as nothing else carries the mean.
         columns = levels if self._carries_mean(name, state) else levels[1:]

@@ -37,6 +37,7 @@ class KeptRow:
 class InfluenceRecord:
     """What the step leaves in the record beside its rulings."""
 
+    # The first of those that stay, as many as the plan records one by one.
     kept: tuple[KeptRow, ...]
     kept_ruling: str | None
     removed: tuple[tuple[KeptRow, str], ...]
@@ -62,7 +63,7 @@ def influence(state: State, plan: Plan, bench: Bench) -> tuple[State, tuple[Ruli
         compared = bench.without_each(fitted, measures, flagged, plan.alpha)
         found = _first_change(compared, state, plan, bench, fitted, measures)
         if found is None:
-            _stay(compared, measures, fitted, bench, rulings, removed, flagged)
+            _stay(compared, measures, fitted, plan, bench, rulings, removed)
             break
         comparison, ground, value, limit = found
         kept_row = _kept_row(comparison, measures, bench)
@@ -73,7 +74,7 @@ def influence(state: State, plan: Plan, bench: Bench) -> tuple[State, tuple[Ruli
                 limit=plan.influence.at_most,
             )  # fmt: skip
             state = replace(state, cap_reached=True)
-            _stay(compared, measures, fitted, bench, rulings, removed, flagged)
+            _stay(compared, measures, fitted, plan, bench, rulings, removed)
             break
         state = _leave(
             comparison, ground, value, limit, kept_row, len(flagged), state, bench, fitted, rulings, removed
@@ -213,20 +214,21 @@ def _stay(
     compared: Sequence[Comparison],
     measures: Measures,
     fitted: Fitted,
+    plan: Plan,
     bench: Bench,
     rulings: Rulings,
     removed: list[tuple[KeptRow, str]],
-    flagged: NDArray[np.int64],
 ) -> None:
     """Rule on the flagged rows that stay, and leave them all out together once."""
     if not compared:
         rulings.add("influence.flag_when", "all rows", "none_flagged", fits=(fitted.id,))
         bench.keep_check("influence", InfluenceRecord((), None, tuple(removed), None))
         return
-    kept = tuple(_kept_row(comparison, measures, bench) for comparison in compared)
+    shown = compared[: plan.influence.record_at_most]
+    kept = tuple(_kept_row(comparison, measures, bench) for comparison in shown)
     changes = [c.change_coefficient for c in compared if c.change_coefficient is not None]
     evidence: dict[str, float | int | str | bool | None] = {
-        "rows": len(kept),
+        "rows": len(compared),
         "largest_change_coefficient": max(changes, default=None),
         "largest_change_r_squared": max((abs(c.change_r_squared or 0.0) for c in compared), default=None),
     }

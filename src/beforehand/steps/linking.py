@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from beforehand.fit.dependence import dependence
+from beforehand.fit.sweeping import RankDeficient
 from beforehand.steps.bench import Linked
 from beforehand.steps.state import Model, column_name
 from beforehand.steps.workings import Workings
@@ -14,6 +15,13 @@ def linked_of(workings: Workings, model: Model) -> Linked | None:
     empty = next((term.name for term in model.terms if not term.keys), None)
     if empty is not None:
         return Linked(predictor=empty, column=empty, weights=(), constant=True, members=(empty,))
+    try:
+        # What can be swept in has no dependence, and is needed next.
+        workings.tableau(model)
+    except RankDeficient:
+        pass
+    else:
+        return None
     moments = workings.moments(model.rows, (*model.keys, model.outcome))
     found = dependence(moments, model.keys, intercept=model.intercept)
     if found is None:

@@ -38,6 +38,18 @@ class Term:
     keys: tuple[Key, ...]
     kind: str = "number"
     parts: tuple[str, ...] = ()
+    _hash: int = field(init=False, repr=False, compare=False)
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "_hash", hash((self.name, self.keys, self.kind, self.parts)))
+
+    def __hash__(self) -> int:
+        """The hash, taken once."""
+        return self._hash
+
+    def __reduce__(self) -> tuple[type[Term], tuple[object, ...]]:
+        """Made anew in another process, where text hashes otherwise."""
+        return Term, (self.name, self.keys, self.kind, self.parts)
 
     @property
     def single(self) -> bool:
@@ -84,16 +96,28 @@ class Model:
     terms: tuple[Term, ...]
     intercept: bool = True
     errors: str = "classical"
+    # Everything about a fit is looked up by its model.
+    _hash: int = field(init=False, repr=False, compare=False)
+    # Design columns in plan order, without the intercept.
+    keys: tuple[Key, ...] = field(init=False, repr=False, compare=False)
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "keys", tuple(key for term in self.terms for key in term.keys))
+        own = (self.rows, self.outcome, self.terms, self.intercept, self.errors)
+        object.__setattr__(self, "_hash", hash(own))
+
+    def __hash__(self) -> int:
+        """The hash, taken once."""
+        return self._hash
+
+    def __reduce__(self) -> tuple[type[Model], tuple[object, ...]]:
+        """Made anew in another process, where text hashes otherwise."""
+        return Model, (self.rows, self.outcome, self.terms, self.intercept, self.errors)
 
     @property
     def names(self) -> tuple[str, ...]:
         """Predictors in the model, in plan order."""
         return tuple(term.name for term in self.terms)
-
-    @property
-    def keys(self) -> tuple[Key, ...]:
-        """Design columns in plan order, without the intercept."""
-        return tuple(key for term in self.terms for key in term.keys)
 
     @property
     def p(self) -> int:

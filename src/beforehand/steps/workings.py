@@ -99,7 +99,7 @@ class Workings:
             if (other.rows, other.outcome, other.intercept) != (model.rows, model.outcome, model.intercept):
                 continue
             extra = len(other.keys) - len(model.keys)
-            if 0 <= extra <= NEAR and wanted <= set(other.keys) and (best is None or extra < best[0]):
+            if 0 <= extra <= NEAR and (best is None or extra < best[0]) and wanted.issubset(other.keys):
                 best = (extra, other)
         if best is None:
             return None

@@ -65,7 +65,7 @@ def prepared(plan: Plan, read: AsRead) -> Table:
     if faults:
         raise DataError(faults)
     order = canonical_order(plan, read)
-    fingerprint = _fingerprint(plan, read, order)
+    fingerprint = _fingerprint(read, order)
     eligible, stages = _eligible(plan, read)
     index = order if eligible.all() else order[eligible[order]]
     if not len(index):
@@ -154,15 +154,20 @@ def canonical_order(plan: Plan, read: AsRead) -> NDArray[np.int64]:
         labels = read.columns[plan.data.row_label]
         return np.argsort(labels.astype(str), kind="stable").astype(np.int64)
     order = np.arange(read.n_rows, dtype=np.int64)
-    rank = np.zeros(read.n_rows, dtype=np.int64)
+    # Where each place's group of equal rows begins; only groups of two or more are sorted further.
+    start = np.zeros(read.n_rows, dtype=np.int64)
+    tied = order.copy()
     for name in sorted(read.columns):
-        key = _sortable(read.columns[name])
-        order = np.lexsort((key, rank)).astype(np.int64)
-        sorted_key, sorted_rank = key[order], rank[order]
-        step = (sorted_key[1:] != sorted_key[:-1]) | (sorted_rank[1:] != sorted_rank[:-1])
-        rank[order] = np.concatenate([[0], np.cumsum(step)])
-        if int(rank.max(initial=0)) == read.n_rows - 1:
+        if not len(tied):
             break
+        key = _sortable(read.columns[name])[order[tied]]
+        within = np.lexsort((key, start[tied])) if start[tied].any() else np.argsort(key, kind="stable")
+        order[tied] = order[tied][within]
+        key, group = key[within], start[tied]
+        new = np.concatenate([[True], (key[1:] != key[:-1]) | (group[1:] != group[:-1])])
+        start[tied] = np.maximum.accumulate(np.where(new, tied, 0))
+        alone = new & np.concatenate([new[1:], [True]])
+        tied = tied[~alone]
     return order
 
 
@@ -174,7 +179,7 @@ def _sortable(values: NDArray[Any]) -> NDArray[Any]:
     return np.where(np.isnan(values), -np.inf, values)
 
 
-def _fingerprint(plan: Plan, read: AsRead, order: NDArray[np.int64]) -> str:
+def _fingerprint(read: AsRead, order: NDArray[np.int64]) -> str:
     """Digest of the columns as typed, so that 1.0 and 1.00, or another separator, are the same."""
     digest = hashlib.sha256(b"beforehand table 1\n")
     straight = bool((np.diff(order) == 1).all())
