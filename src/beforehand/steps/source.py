@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from beforehand.fit import ladder
 from beforehand.fit.columns import Factor, FloatArray, Key
+from beforehand.fit.fitting import Unrepresentable
 from beforehand.steps.missing_data import Base
 from beforehand.table import Table
 
@@ -119,14 +120,21 @@ def evaluate(key: Key, read: ReadColumn, levels: ReadLevels) -> FloatArray:
     depend on blocks.
     """
     product: FloatArray | None = None
-    for factor in key.factors:
-        values = _factor(factor, read(factor.column), levels)
-        product = values if product is None else product * values
-    assert product is not None
-    if key.centre is None:
-        return product
-    about: FloatArray = product - key.centre
-    return about * about
+    with np.errstate(over="ignore", invalid="ignore"):
+        for factor in key.factors:
+            values = _factor(factor, read(factor.column), levels)
+            product = values if product is None else product * values
+        assert product is not None
+        if key.centre is not None:
+            about = product - key.centre
+            product = about * about
+    if (len(key.factors) > 1 or key.centre is not None) and not np.isfinite(product).all():
+        what = "the square" if key.centre is not None else "the product"
+        raise Unrepresentable(
+            f"{what} of {' and '.join(factor.column for factor in key.factors)} is too large for a double; "
+            "other units of the columns help"
+        )
+    return product
 
 
 def _factor(factor: Factor, values: FloatArray, levels: ReadLevels) -> FloatArray:

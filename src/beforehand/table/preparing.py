@@ -65,9 +65,10 @@ def prepared(plan: Plan, read: AsRead) -> Table:
     if faults:
         raise DataError(faults)
     order = canonical_order(plan, read)
-    fingerprint = _fingerprint(read, order)
+    fingerprint, ordered = _fingerprint(read, order)
     eligible, stages = _eligible(plan, read)
-    index = order if eligible.all() else order[eligible[order]]
+    everyone = bool(eligible.all())
+    index = order if everyone else order[eligible[order]]
     if not len(index):
         raise DataError([fault(read.file, None, "eligibility", "no row is eligible", "no_rows")])
     columns: dict[str, Column] = {}
@@ -75,7 +76,8 @@ def prepared(plan: Plan, read: AsRead) -> Table:
     for name, values in read.columns.items():
         if name == plan.data.row_label and not _is_used(plan, name):
             continue
-        columns[name] = _column(name, values, index, declared.get(name), read, name_row, faults)
+        chosen = ordered[name] if everyone else values[index]
+        columns[name] = _column(name, chosen, index, declared.get(name), read, name_row, faults)
     missing_by_derive = _derive(plan, columns)
     out_of_range = _ranges(plan, columns, index, read, name_row, faults)
     if faults:
@@ -179,12 +181,16 @@ def _sortable(values: NDArray[Any]) -> NDArray[Any]:
     return np.where(np.isnan(values), -np.inf, values)
 
 
-def _fingerprint(read: AsRead, order: NDArray[np.int64]) -> str:
-    """Digest of the columns as typed, so that 1.0 and 1.00, or another separator, are the same."""
+def _fingerprint(read: AsRead, order: NDArray[np.int64]) -> tuple[str, dict[str, NDArray[Any]]]:
+    """Digest of the columns as typed, so that 1.0 and 1.00, or another separator, are the same.
+
+    With it come the columns in the order of which it was taken.
+    """
+    ordered: dict[str, NDArray[Any]] = {}
     digest = hashlib.sha256(b"beforehand table 1\n")
     straight = bool((np.diff(order) == 1).all())
     for name in sorted(read.columns):
-        values = read.columns[name] if straight else read.columns[name][order]
+        values = ordered[name] = read.columns[name] if straight else read.columns[name][order]
         if values.dtype == object:
             digest.update(f"text {len(name.encode())} {name}\n".encode())
             for text in values.tolist():
@@ -193,9 +199,10 @@ def _fingerprint(read: AsRead, order: NDArray[np.int64]) -> str:
         else:
             digest.update(f"number {len(name.encode())} {name}\n".encode())
             # One pattern of bits for every missing number.
-            plain = np.where(np.isnan(values), np.nan, values)
-            digest.update(plain.astype("<f8", copy=False).tobytes())
-    return f"sha256:{digest.hexdigest()}"
+            gaps = np.isnan(values)
+            plain = np.where(gaps, np.nan, values) if gaps.any() else values
+            digest.update(np.ascontiguousarray(plain, dtype="<f8").data)
+    return f"sha256:{digest.hexdigest()}", ordered
 
 
 def _eligible(plan: Plan, read: AsRead) -> tuple[Mask, list[Stage]]:
@@ -240,7 +247,7 @@ def _meets(line: Eligibility, values: NDArray[Any]) -> Mask:
 
 def _column(
     name: str,
-    values: NDArray[Any],
+    chosen: NDArray[Any],
     index: NDArray[np.int64],
     predictor: Predictor | None,
     read: AsRead,
@@ -248,7 +255,6 @@ def _column(
     faults: list[Fault],
 ) -> Column:
     """One column over the eligible rows: numbers, or codes of its levels."""
-    chosen = values[index]
     if chosen.dtype != object:
         return Column(name=name, kind="number", values=chosen)
     texts = chosen.tolist()

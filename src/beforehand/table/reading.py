@@ -47,11 +47,17 @@ def read_table(plan: Plan, path: str | os.PathLike[str] | None = None) -> Table:
     content = content_of(file, name)
     wanted = wanted_of(plan)
     if len(content) >= SMALLEST:
-        quick = quick_columns(content, plan.data, wanted)
+        plain = file if file.stat().st_size == len(content) else None
+        quick = quick_columns(content, plan.data, wanted, plain)
         if quick is not None:
             del content
             rows = len(next(iter(quick.values())))
-            return prepared(plan, AsRead(file=name, columns=quick, n_rows=rows))
+            try:
+                return prepared(plan, AsRead(file=name, columns=quick, n_rows=rows))
+            except DataError:
+                # The strict way names the lines of what is wrong.
+                del quick
+                content = content_of(file, name)
     cells = read_cells(text_of(content, plan.data, name), plan.data, wanted, name)
     return _typed(plan, cells.columns, cells.lines, wanted, name)
 
