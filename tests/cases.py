@@ -77,7 +77,7 @@ DELIVERY = {
 }
 
 
-def run_on(table: dict[str, list], outcome: str, **blocks: object) -> Run:
+def run_on(table: dict[str, list], outcome: str, /, **blocks: object) -> Run:
     """Run a plan on a table: every other column a numeric predictor unless ``predictors`` says else."""
     frame = pd.DataFrame(table)
     plan = {

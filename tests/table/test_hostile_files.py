@@ -147,17 +147,50 @@ def test_no_such_file(tmp_path):
 
 
 ODD = [
-    "k1,3.5,0.25,on\n", "k2,4,,off\n", "k3,nan,2,on\n", "k4,5,NaN,off\n", "k5,5, 7 ,on\n", "k6,6,1.0e+3,off\n",
-    "k7,7,.5,on\n", "k8,8,5.,on\n", "k9,9,-0.0,off\n", "ka,10,1e400,on\n", "kb,11,0x1A,on\n", "kc,12,1 2,on\n",
-    "kd,13,TRUE,on\n", "ke,14,1\n", "kf,15,1,on,9\n", "\n", "kg,16,\"1\",on\n", "kh,17,1,\"o\"\"n\"\n",
-    "ki,18,1,on \n", "kj,19,1,\n", "kk,20,#N/A,off\n", "kl,21,1e-320,on\n", "km,22,0.1234567890123456789,on\n",
-    "kn,23,١,on\n", "ko,24,1d5,on\n", "kp,25,--1,on\n", "kq,26,+1,on\n", "kr,27,inf,on\n", "ks,28,Infinity,on\n",
-    "kt,29,1,on\r\n", "ku,30,1,o\rn\n", "k1,31,1,on\n", "kv,32,2,NA\n", " kw ,33,2,on\n", "kx,34,1e,on\n",
-    "ky,35,12345678901234567890,off\n", "kz,36,9007199254740993,off\n", "\"k\nA\",37,1,on\n",
-]  # fmt: skip
+    "k1,3.5,0.25,on\n",
+    "k2,4,,off\n",
+    "k3,nan,2,on\n",
+    "k4,5,NaN,off\n",
+    "k5,5, 7 ,on\n",
+    "k6,6,1.0e+3,off\n",
+    "k7,7,.5,on\n",
+    "k8,8,5.,on\n",
+    "k9,9,-0.0,off\n",
+    "ka,10,1e400,on\n",
+    "kb,11,0x1A,on\n",
+    "kc,12,1 2,on\n",
+    "kd,13,TRUE,on\n",
+    "ke,14,1\n",
+    "kf,15,1,on,9\n",
+    "\n",
+    'kg,16,"1",on\n',
+    'kh,17,1,"o""n"\n',
+    "ki,18,1,on \n",
+    "kj,19,1,\n",
+    "kk,20,#N/A,off\n",
+    "kl,21,1e-320,on\n",
+    "km,22,0.1234567890123456789,on\n",
+    "kn,23,١,on\n",
+    "ko,24,1d5,on\n",
+    "kp,25,--1,on\n",
+    "kq,26,+1,on\n",
+    "kr,27,inf,on\n",
+    "ks,28,Infinity,on\n",
+    "kt,29,1,on\r\n",
+    "ku,30,1,o\rn\n",
+    "k1,31,1,on\n",
+    "kv,32,2,NA\n",
+    " kw ,33,2,on\n",
+    "kx,34,1e,on\n",
+    "ky,35,12345678901234567890,off\n",
+    "kz,36,9007199254740993,off\n",
+    '"k\nA",37,1,on\n',
+]
 
 
-@pytest.mark.parametrize("head", ["kettle,minutes,scale,lid", "kettle,lid,minutes,scale", "x,kettle,lid,minutes,scale"])  # fmt: skip
+@pytest.mark.parametrize(
+    "head", ["kettle,minutes,scale,lid", "kettle,lid,minutes,scale", "x,kettle,lid,minutes,scale"]
+)
 @pytest.mark.parametrize("last_end", [True, False])
 @pytest.mark.parametrize("odd", [None, *range(len(ODD))])
 def test_the_quick_way_reads_as_the_strict_way(tmp_path, monkeypatch, odd, head, last_end):
