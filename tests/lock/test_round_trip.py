@@ -103,7 +103,10 @@ def test_any_lock_comes_back_and_is_written_the_same(lock: Lock) -> None:
 def plain(value: Any) -> Any:
     """Turn a record into what a reader of YAML gives."""
     if isinstance(value, Record):
-        fields = {name: plain(getattr(value, name)) for name in type(value).model_fields}
+        fields = {
+            field.alias or name: plain(getattr(value, name))
+            for name, field in type(value).model_fields.items()
+        }
         return {name: item for name, item in fields.items() if item is not None or name not in value.left_out}
     if isinstance(value, Mapping):
         return {key: plain(item) for key, item in value.items()}

@@ -107,7 +107,7 @@ def test_what_a_run_was_made_with_changes_no_covered_byte(lock: Lock) -> None:
 def test_order_of_fields_in_the_file_is_that_of_the_models(lock: Lock) -> None:
     """A reader of YAML meets the fields of each record in their declared order."""
     found = yaml.safe_load(lock_text(lock))
-    assert list(found) == list(Lock.model_fields)
+    assert list(found) == [name for name in Lock.model_fields if name not in Lock.left_out]
     assert list(found["fits"][0]) == list(FitRecord.model_fields)
     written = [name for name in FitTerm.model_fields if name not in FitTerm.left_out]
     assert list(found["fits"][0]["terms"][0]) == written

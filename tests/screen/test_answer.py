@@ -213,12 +213,16 @@ def test_every_caution_is_shown_whatever_the_status(hives: dict[str, Any], lock_
     ("state", "changes", "sentence"),
     [
         ("sealed", [], "The plan was sealed before this run."),
-        ("amended", ["alpha 0.05, was 0.01"], "The plan was amended after its seal: alpha 0.05, was 0.01."),
+        (
+            "amended",
+            [{"clause": "alpha", "class": "looser", "says": "alpha 0.05, was 0.01."}],
+            "The plan was amended after its seal: alpha 0.05, was 0.01.",
+        ),
         ("deviates", [], "The plan deviates from its seal."),
     ],
 )
 def test_the_record_says_whether_the_plan_came_first(
-    state: str, changes: list[str], sentence: str, hives: dict[str, Any], lock_of: LockOf
+    state: str, changes: list[dict[str, str]], sentence: str, hives: dict[str, Any], lock_of: LockOf
 ) -> None:
     """The state of the seal stands beside the name of the record."""
     hives["seal"] = {"state": state, "changes": changes}

@@ -7,7 +7,7 @@ list, never left out, so that two locks can be read side by side.
 from __future__ import annotations
 
 from collections.abc import Mapping
-from typing import Annotated, Literal
+from typing import Annotated, ClassVar, Literal
 
 from pydantic import Field
 
@@ -32,21 +32,42 @@ class PlanRecord(Record):
     written: PlainData = Field(description="The plan with all defaults written out.")
 
 
+class SealChange(Record):
+    """One change of the plan since it was sealed."""
+
+    clause: str = Field(description="Place in the plan.")
+    class_: Literal["looser", "stricter", "different", "wording"] = Field(
+        alias="class", description="What the change does to the answer's standard."
+    )
+    says: str = Field(description="The change in one sentence.")
+
+
 class SealRecord(Record):
     """Whether the plan was sealed before the run, and what changed since."""
 
+    left_out: ClassVar[frozenset[str]] = frozenset({"seals", "before_first_look"})
+
     state: Literal["sealed", "unsealed", "amended", "deviates"] = Field(description="State of the seal.")
-    changes: tuple[str, ...] = Field(description="Changes since the seal, one sentence each.")
+    seals: Count | None = Field(default=None, description="Seals in the chain; the last is the one in force.")
+    before_first_look: bool | None = Field(
+        default=None, description="Whether the first seal precedes the first run on this outcome."
+    )
+    changes: tuple[SealChange, ...] = Field(description="Changes since the first seal.")
 
 
 class DataRecord(Record):
     """The table that was read."""
+
+    left_out: ClassVar[frozenset[str]] = frozenset({"columns"})
 
     file: str = Field(description="File as the plan names it.")
     fingerprint: Digest = Field(description="Digest of the columns in use, as typed, in canonical order.")
     rows: Count = Field(description="Rows read.")
     labelled: bool = Field(description="Whether rows have labels of their own.")
     labels: Literal["shown", "hashed"] = Field(description="How labels stand in this lock.")
+    columns: Mapping[Name, str] | None = Field(
+        default=None, description="Names of the file's columns by those of the plan, where they differ."
+    )
 
 
 class Alternative(Record):
@@ -82,12 +103,18 @@ class Lock(Record):
     A lock made in memory carries the digest ``""``; writing fills it in.
     """
 
+    left_out: ClassVar[frozenset[str]] = frozenset({"sealed_plan", "sealed_answer"})
+
     lock: Literal[1] = Field(description="Version of the lock's language.")
     plan: PlanRecord = Field(description="The plan that was run.")
     seal: SealRecord = Field(description="State of its seal.")
     data: DataRecord = Field(description="The table that was read.")
     status: Status = Field(description="How the run ended.")
     answer: Answer | None = Field(description="What it came to; null when it stopped before any fit.")
+    sealed_answer: Answer | None = Field(
+        default=None, description="What the plan as first sealed comes to, beside the amended one."
+    )
+    sealed_plan: PlanRecord | None = Field(default=None, description="The plan as first sealed.")
     ledger: tuple[LedgerStage, ...] = Field(description="Rows at each stage.")
     rows_removed: tuple[RowRemoved, ...] = Field(description="Rows that left.")
     predictors: Mapping[Name, PredictorFate] = Field(description="How each predictor ended, in plan order.")

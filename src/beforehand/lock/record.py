@@ -21,7 +21,9 @@ class Record(BaseModel):
     # Fields that are not written where they are null.
     left_out: ClassVar[frozenset[str]] = frozenset()
 
-    model_config = ConfigDict(frozen=True, extra="forbid", strict=True, allow_inf_nan=False)
+    model_config = ConfigDict(
+        frozen=True, extra="forbid", strict=True, allow_inf_nan=False, populate_by_name=True
+    )
 
 
 def _short_enough(key: str) -> str:

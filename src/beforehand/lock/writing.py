@@ -37,7 +37,7 @@ _IN_BLOCKS: frozenset[type] = frozenset(
 )
 
 # Lists of sentences, one a line; other lists of text hold numbers of fits, rulings and checks.
-_SENTENCES = frozenset({"cautions", "changes", "differences"})
+_SENTENCES = frozenset({"cautions", "differences"})
 
 # Mappings that hold what a person wrote, not what a run computed.
 _WRITTEN_BY_HAND = frozenset({"written", "changes"})
@@ -138,8 +138,8 @@ _AS_GIVEN: Mapping[type, Format] = {**_COMPUTED, float: exact_text}
 @cache
 def _fields_of(kind: type[Record]) -> tuple[tuple[str, ...], Callable[[Any], Any]]:
     """Names of a record's fields, and what takes their values in that order."""
-    names = tuple(kind.model_fields)
-    return names, attrgetter(*names)
+    names = tuple([field.alias or name for name, field in kind.model_fields.items()])
+    return names, attrgetter(*kind.model_fields)
 
 
 @cache
@@ -179,6 +179,8 @@ def _fields(record: Record, names: tuple[str, ...], indent: str) -> Iterator[str
     """Lines of a record in block style."""
     for name in names:
         value = getattr(record, name)
+        if value is None and name in record.left_out:
+            continue
         if isinstance(value, Record) and type(value) in _IN_BLOCKS:
             yield f"{indent}{name}:"
             yield from _block(value, f"{indent}  ")

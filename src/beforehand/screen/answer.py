@@ -178,10 +178,13 @@ def _record(lock: Lock, record: str, width: int) -> Section:
 
 def seal_sentence(lock: Lock) -> str:
     """What the record shows about when the plan was fixed."""
-    changes = [shorten(text, 120) for text in lock.seal.changes]
+    changes = [shorten(change.says.rstrip("."), 120) for change in lock.seal.changes]
     told = f": {listed(changes, MOST_SEAL_CHANGES)}." if changes else "."
+    late = lock.seal.before_first_look is False
     return {
-        "sealed": "The plan was sealed before this run.",
+        "sealed": "The plan was sealed, but after the first run on this outcome."
+        if late
+        else "The plan was sealed before this run.",
         "unsealed": "The plan is not sealed, so the record cannot show that it came first.",
         "amended": f"The plan was amended after its seal{told}",
         "deviates": f"The plan deviates from its seal{told}",
