@@ -1,64 +1,51 @@
-"""The public functions: read, check, run, write, replay, trace, draft.
+"""The public functions: read, check, run, write, replay, compare, trace, draft.
 
 Files, and only here and in the command line: everything below is given data and gives data back.
 """
 
 from __future__ import annotations
 
-import hashlib
-import hmac
 import os
-import secrets
-from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import replace
+from datetime import UTC, datetime
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Literal
 
-from beforehand.faults import Fault, PlanError
+from beforehand.faults import DataError
 from beforehand.lock import Lock, read_lock, write_lock
 from beforehand.lock.difference import Replay, replay_of
-from beforehand.lock.files import write_whole
 from beforehand.lock.trace import Story, trace
-from beforehand.lock.writing import lock_text, sealed_lock
-from beforehand.plan import Plan, PlanOrigin, plan_from_mapping, read_plan, with_changes
-from beforehand.record import lock_of
-from beforehand.running import Progress, Trail, run_steps
-from beforehand.table import Table, read_table, table_from_frame
+from beforehand.lock.writing import lock_text
+from beforehand.plan import Plan, decisions_digest, plan_from_mapping, read_plan
+from beforehand.record import learned_from, learned_in
+from beforehand.refreshing import Refreshed, refreshed, unkept
+from beforehand.running import Progress, run_steps
+from beforehand.runs import UNSEALED_STANDING, Run, labels_of, lock_path, plan_of, reader, run_plan
+from beforehand.sealing import (
+    Seal,
+    Standing,
+    add_look,
+    looks_path,
+    read_looks,
+    read_seals,
+    seal_path,
+    seal_plan,
+    standing_of,
+)
+from beforehand.sealing.chain import refused
+from beforehand.steps.learned import NOTHING, Learned
+from beforehand.table import read_table
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
+
     import pandas as pd
 
+    from beforehand.comparing import Comparison
+    from beforehand.handing import Handover, Received
     from beforehand.review import Review
 
 Data = "str | os.PathLike[str] | pd.DataFrame | None"
-
-PLAN_SUFFIX = ".plan.yaml"
-LOCK_SUFFIX = ".lock.yaml"
-KEY_SUFFIX = ".labels.key"
-
-# A key of 256 bits, as long as the digest it keys.
-KEY_BYTES = 32
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Run:
-    """A finished run.
-
-    Attributes
-    ----------
-    lock : Lock
-        The whole record, digest included.
-    trail : Trail
-        The same run as the program's own objects, the exact moments among them.
-    """
-
-    lock: Lock
-    trail: Trail
-
-    @property
-    def status(self) -> str:
-        """``adopted``, ``mean_only``, ``inconclusive`` or ``stopped``."""
-        return self.lock.status
 
 
 def run(
@@ -66,8 +53,13 @@ def run(
     data: str | os.PathLike[str] | pd.DataFrame | None = None,
     *,
     progress: Progress | None = None,
+    register: bool = True,
+    learned: Learned = NOTHING,
 ) -> Run:
     """Run a plan and its declared alternatives on a table.
+
+    A plan that was read from a file has a register of looks beside it, and each run adds a line to it.
+    An amended plan is run as it was first sealed too, and the lock holds both answers.
 
     Parameters
     ----------
@@ -76,16 +68,24 @@ def run(
         The table; without it the file that the plan names.
     progress : callable, optional
         Hears what is being done, a few words at a time.
+    register : bool
+        Whether the run is a look: False for one whose result nobody sees.
+    learned : Learned
+        Fills and exponents of an earlier run that are used again; they stand in the lock.
 
     Returns
     -------
     Run
-        Nothing is written; see ``write_lock``.
+        The lock is not written; see ``write_lock``.
 
     Raises
     ------
     PlanError, DataError
         With every fault of the plan or the table.
+    LockError
+        The chain of seals or looks beside the plan is broken.
+    WriteError
+        The register of looks cannot be written.
 
     Examples
     --------
@@ -101,17 +101,25 @@ def run(
     'adopted'
     """
     plan = plan if isinstance(plan, Plan) else read_plan(plan)
-    read = _reader(data)
-    table = read(plan)
-    trail = run_steps(plan, table, progress)
-    alternatives: dict[str, Trail] = {}
-    for name, changes in plan.alternatives.items():
-        changed = with_changes(plan, changes)
-        again = table if _same_contract(plan, changed) else read(changed)
-        alternatives[name] = run_steps(changed, again, progress)
-    file = Path(plan.origin.path).name if plan.origin is not None and plan.origin.path else "plan.yaml"
-    lock = lock_of(trail, alternatives, file=file, labels=_labels(plan))
-    return Run(lock=sealed_lock(lock), trail=trail)
+    path = None if plan.origin is None or plan.origin.path is None else Path(plan.origin.path)
+    standing, seals = UNSEALED_STANDING, tuple[Seal, ...]()
+    if path is not None:
+        seals, looks = read_seals(seal_path(path)), read_looks(looks_path(path))
+        standing = standing_of(plan, seals, looks)
+    done = run_plan(plan, data, progress, standing, learned)
+    if path is None or not register:
+        return done
+    looks = add_look(
+        looks_path(path),
+        date=datetime.now(UTC).strftime("%Y-%m-%dT%H:%M:%SZ"),
+        outcome=plan.outcome.column,
+        plan=done.lock.plan.decisions,
+        data=done.lock.data.fingerprint,
+        lock=done.lock.digest,
+        status=done.lock.status,
+        seal=seals[-1].digest if seals else None,
+    )
+    return replace(done, looks=looks)
 
 
 def check(plan: Plan | str | os.PathLike[str], data: str | os.PathLike[str] | None = None) -> Review:
@@ -125,7 +133,7 @@ def check(plan: Plan | str | os.PathLike[str], data: str | os.PathLike[str] | No
     from beforehand.review import review
 
     plan = plan if isinstance(plan, Plan) else read_plan(plan)
-    return review(plan, _reader(data)(plan))
+    return review(plan, reader(data)(plan))
 
 
 def draft(table_path: str | os.PathLike[str], outcome: str, *, separator: str | None = None) -> str:
@@ -165,78 +173,206 @@ def replay(
     LockError, PlanError, DataError
     """
     old = read_lock(lock)
-    again = read_plan(plan) if plan is not None else _plan_of(old, Path(lock))
-    new = run(again, data, progress=progress).lock
+    again = read_plan(plan) if plan is not None else plan_of(old, Path(lock))
+    # How the plan stood to its seals is a fact of that day, not a result.
+    first = None if old.sealed_plan is None else plan_from_mapping(old.sealed_plan.written, old.plan.file)
+    new = run_plan(again, data, progress, Standing(record=old.seal, sealed=first), learned_in(old)).lock
     return replay_of(old, new)
 
 
-def lock_path(plan: Plan) -> Path:
-    """Where a plan's lock stands: beside it, under its name.
+def compare(
+    old: str | os.PathLike[str],
+    new: str | os.PathLike[str],
+    data: str | os.PathLike[str] | None = None,
+    *,
+    progress: Progress | None = None,
+) -> Comparison:
+    """Say what changed between two plans or two locks, and which way each change leans.
+
+    Parameters
+    ----------
+    old, new : path
+        A plan or a lock; ``REVISION:path`` is read from git.
+    data : path, optional
+        Each plan is run on this table, which counts as a look, and the records are compared too.
 
     Raises
     ------
-    PlanError
-        For a plan that was not read from a file.
+    InputError, PlanError, DataError, LockError
     """
-    if plan.origin is None or plan.origin.path is None:
-        raise PlanError(
-            [Fault(file="plan", line=None, place="", what="was not read from a file", code="no_file")]
-        )
-    path = Path(plan.origin.path)
-    return path.with_name(path.name.removesuffix(PLAN_SUFFIX).removesuffix(".yaml") + LOCK_SUFFIX)
+    from beforehand.comparing import compared
+
+    return compared(old, new, None if data is None else lambda plan: run(plan, data, progress=progress).lock)
 
 
-def _reader(data: str | os.PathLike[str] | pd.DataFrame | None) -> Callable[[Plan], Table]:
-    """What reads the table under a plan's contract."""
-    if data is None or isinstance(data, str | os.PathLike):
-        return lambda plan: read_table(plan, data)
-    return lambda plan: table_from_frame(plan, data)
+def refresh(
+    plan: str | os.PathLike[str],
+    data: str | os.PathLike[str],
+    *,
+    against: str | os.PathLike[str] | None = None,
+    old_data: str | os.PathLike[str] | None = None,
+    progress: Progress | None = None,
+) -> Refreshed:
+    """Run a plan on a refreshed table and hold the answer against the one before.
 
+    The run is a look and stands in the register; neither lock nor record is written.
 
-def _same_contract(plan: Plan, changed: Plan) -> bool:
-    """Whether two plans read the same table from the same file."""
-    parts = (
-        "data",
-        "eligibility",
-        "derive",
-        "outcome",
-        "predictors",
-        "missing_data",
-        "errors",
-        "assumptions",
-    )
-    return all(getattr(plan, part) == getattr(changed, part) for part in parts)
+    Parameters
+    ----------
+    plan, data : path
+        The plan, and the refreshed table.
+    against : path, optional
+        The lock of the run before; without it the one beside the plan.
+    old_data : path, optional
+        The table of that lock; without it the one that the plan names.
+    progress : callable, optional
+        Hears what is being done.
 
+    Returns
+    -------
+    Refreshed
 
-def _plan_of(lock: Lock, path: Path) -> Plan:
-    """The plan as it is written in a lock, in the lock's folder."""
-    plan = plan_from_mapping(lock.plan.written, lock.plan.file)
-    origin = PlanOrigin(path=path.with_name(lock.plan.file), name=lock.plan.file, lines={})
-    return plan.with_origin(origin)
-
-
-def _labels(plan: Plan) -> Callable[[str], str]:
-    """What stands for a row's label in the lock: itself, or a keyed hash.
-
-    An unkeyed hash of a guessable label can be undone by guessing, so the key is a file of its own
-    beside the plan, made once and not to be handed on with the lock.
+    Raises
+    ------
+    LockError
+        There is no such lock, it is of another plan, or the old table is not the one of which it is.
+    PlanError, DataError, WriteError
+        As of `run`; a new level, a value out of range or a text for a number is a verdict, not an error.
     """
-    if plan.data.labels_in_lock == "shown":
-        return str
-    key = _label_key(plan)
-    return lambda label: hmac.new(key, label.encode(), hashlib.sha256).hexdigest()[:16]
-
-
-def _label_key(plan: Plan) -> bytes:
-    """The key of a plan's labels, made on first use."""
-    path = lock_path(plan)
-    path = path.with_name(path.name.removesuffix(LOCK_SUFFIX) + KEY_SUFFIX)
+    planned = read_plan(plan)
+    old = read_lock(lock_path(planned) if against is None else against)
+    name = str(lock_path(planned) if against is None else against)
+    if old.plan.decisions != decisions_digest(planned):
+        what = "its plan decides otherwise than this one: compare the two plans first"
+        raise refused(name, what, "refresh.plan")
+    before = read_table(planned, old_data)
+    if before.fingerprint != old.data.fingerprint:
+        which = planned.data.file if old_data is None else str(old_data)
+        what = f"{which} is not the table of which it is the record: give that one by --old"
+        raise refused(name, what, "refresh.data")
+    first = run_steps(planned, before, progress, learned_in(old))
+    learned = learned_from(old) if planned.refresh.learned == "replay" else NOTHING
     try:
-        return bytes.fromhex(path.read_text(encoding="ascii").strip())
-    except FileNotFoundError:
-        key = secrets.token_bytes(KEY_BYTES)
-        write_whole(path, (key.hex() + "\n").encode())
-        return key
+        done = run(planned, data, progress=progress, learned=learned)
+    except DataError as error:
+        return unkept(planned, old, error)
+    return refreshed(planned, old, first, done.lock, done.trail, labels_of(planned))
+
+
+def seal(
+    plan: str | os.PathLike[str],
+    *,
+    by: str,
+    seen: str,
+    data: str | os.PathLike[str] | None = None,
+    amend: str | None = None,
+    kind: str | None = None,
+    expected_effect: str | None = None,
+) -> tuple[Seal, bool]:
+    """Seal a plan as it is now: its digests, the time, who, and what had been seen.
+
+    Parameters
+    ----------
+    plan : path
+    by, seen : str
+        Who seals, and what has been seen of the data: ``nothing``, ``predictors`` or ``everything``.
+    data : path, optional
+        Without it the table that the plan names, if it is there.
+    amend : str, optional
+        Why a plan that was sealed before is changed; it makes the seal an amendment.
+    kind : str, optional
+        Of an amendment: ``unforeseen``, ``mistake``, ``gap`` or ``assumption_failed``.
+    expected_effect : str, optional
+        What the amendment is expected to do to the answer.
+
+    Returns
+    -------
+    tuple of Seal and bool
+        The seal in force, and whether it is new.
+
+    Raises
+    ------
+    InputError, PlanError, DataError, LockError
+    WriteError
+        The chain is as it was.
+    """
+    return seal_plan(
+        read_plan(plan),
+        Path(plan),
+        by=by,
+        seen=seen,
+        data=None if data is None else Path(data),
+        amend=amend,
+        kind=kind,
+        expected_effect=expected_effect,
+    )
+
+
+def handover(
+    plan: str | os.PathLike[str],
+    output: str | os.PathLike[str],
+    *,
+    data: str | os.PathLike[str] | None = None,
+    with_data: bool = False,
+    labels: Literal["shown", "hashed"] = "hashed",
+    share_safe: bool = False,
+) -> Handover:
+    """Pack a plan and all that stands beside it into one file that a recipient can check.
+
+    Parameters
+    ----------
+    plan, output : path
+        The plan, and the bundle; only an earlier bundle is replaced.
+    data : path, optional
+        The table, if it is not the one that the plan names.
+    with_data : bool
+        Whether the columns that the plan names go along.
+    labels : {"hashed", "shown"}
+        How row labels stand in the table that goes along.
+    share_safe : bool
+        Whether the lock goes along only as a copy that gives no row away.
+
+    Raises
+    ------
+    InputError, PlanError, DataError, LockError, WriteError
+    """
+    from beforehand.handing import hand_over
+
+    table = None if data is None else Path(data)
+    return hand_over(
+        Path(plan), Path(output), data=table, with_data=with_data, labels=labels, share_safe=share_safe
+    )
+
+
+def receive(
+    bundle: str | os.PathLike[str],
+    folder: str | os.PathLike[str],
+    *,
+    data: str | os.PathLike[str] | None = None,
+    columns: Mapping[str, str] | str | os.PathLike[str] | None = None,
+    progress: Progress | None = None,
+) -> Received:
+    """Check a bundle, unpack it into a folder, and compute its lock again where there is a table.
+
+    Parameters
+    ----------
+    bundle, folder : path
+        Nothing in the folder is overwritten; a bundle with a fault leaves nothing in it.
+    data : path, optional
+        The recipient's table, instead of one in the bundle.
+    columns : mapping of str to str, or path, optional
+        Names of that table's columns by those of the plan, or a YAML file of them.
+    progress : callable, optional
+        Hears what is being done.
+
+    Raises
+    ------
+    InputError, PlanError, DataError, LockError, WriteError
+    """
+    from beforehand.handing import receive_bundle
+
+    table = None if data is None else Path(data)
+    return receive_bundle(Path(bundle), Path(folder), data=table, columns=columns, progress=progress)
 
 
 __all__ = [
@@ -246,14 +382,19 @@ __all__ = [
     "Run",
     "Story",
     "check",
+    "compare",
     "draft",
+    "handover",
     "lock_path",
     "lock_text",
     "plan_from_mapping",
     "read_lock",
     "read_plan",
+    "receive",
+    "refresh",
     "replay",
     "run",
+    "seal",
     "trace",
     "write_lock",
 ]

@@ -15,6 +15,7 @@ from beforehand.steps.collinearity import collinearity
 from beforehand.steps.dependence import remove_dependent
 from beforehand.steps.final_checks import final_checks
 from beforehand.steps.influence import influence
+from beforehand.steps.learned import NOTHING, Learned
 from beforehand.steps.missing_data import Base, missing_data
 from beforehand.steps.recording import RecordingBench
 from beforehand.steps.rulings import Ruling
@@ -47,6 +48,8 @@ class Trail:
         ``adopted``, ``mean_only``, ``inconclusive`` or ``stopped``.
     final : Fitted or None
         The fit of the answer; None where a run stopped before any.
+    learned : Learned
+        What was not learned anew.
     """
 
     plan: Plan
@@ -58,9 +61,12 @@ class Trail:
     bench: RecordingBench
     source: TableSource
     final: Fitted | None
+    learned: Learned = NOTHING
 
 
-def run_steps(plan: Plan, table: Table, progress: Progress | None = None) -> Trail:
+def run_steps(
+    plan: Plan, table: Table, progress: Progress | None = None, learned: Learned = NOTHING
+) -> Trail:
     """Run every step of a plan, in its order, one change at a time.
 
     Parameters
@@ -70,6 +76,8 @@ def run_steps(plan: Plan, table: Table, progress: Progress | None = None) -> Tra
         Rows in canonical order, read under the plan's contract.
     progress : callable or None
         Hears what is being done.
+    learned : Learned
+        Fills and exponents of an earlier run that are used again.
 
     Returns
     -------
@@ -80,7 +88,7 @@ def run_steps(plan: Plan, table: Table, progress: Progress | None = None) -> Tra
     DataError
         When the rows left are too few for the model, or the outcome does not vary.
     """
-    state, base, made = missing_data(plan, table, declared="missing_data" in plan.steps)
+    state, base, made = missing_data(plan, table, declared="missing_data" in plan.steps, learned=learned)
     rulings = list(made)
     source = TableSource.of(table, base)
     bench = RecordingBench(
@@ -89,6 +97,7 @@ def run_steps(plan: Plan, table: Table, progress: Progress | None = None) -> Tra
         order=_in_base(table, _order_column(plan), base),
         groups=_in_base(table, getattr(plan.errors, "cluster_by", None), base),
         progress=progress,
+        learned=learned,
     )
     state = replace(state, errors=bench.errors)
     if not state.status:
@@ -114,6 +123,7 @@ def run_steps(plan: Plan, table: Table, progress: Progress | None = None) -> Tra
         bench=bench,
         source=source,
         final=_final(state, status, bench),
+        learned=learned,
     )
 
 

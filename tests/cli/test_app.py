@@ -14,7 +14,20 @@ from typer.main import get_command
 from beforehand.cli.app import app
 from beforehand.version import __version__
 
-COMMANDS = ["draft", "check", "run", "replay", "trace", "schema", "guide"]
+COMMANDS = [
+    "draft",
+    "check",
+    "seal",
+    "run",
+    "replay",
+    "trace",
+    "compare",
+    "refresh",
+    "handover",
+    "receive",
+    "schema",
+    "guide",
+]
 Command = Callable[..., subprocess.CompletedProcess[str]]
 
 
@@ -39,15 +52,20 @@ def test_the_help_of_the_program_is_this_text(command: Command) -> None:
         "  -h, --help         Show this message and exit.\n"
         "\n"
         "Commands:\n"
-        "  draft   Draft a plan for a table.\n"
-        "  check   Check a plan, and its table against it.\n"
-        "  run     Run a plan, write the lockfile, print the answer.\n"
-        "  replay  Compute a lockfile again and say what differs.\n"
-        "  trace   Tell the story of one predictor or one row.\n"
-        "  schema  Print the JSON Schema of plans or of lockfiles.\n"
-        "  guide   Explain the plan block by block, the rules, the record.\n"
+        "  draft     Draft a plan for a table.\n"
+        "  check     Check a plan, and its table against it.\n"
+        "  seal      Seal a plan: fix it, and be able to show that it came first.\n"
+        "  run       Run a plan, write the lockfile, print the answer.\n"
+        "  replay    Compute a lockfile again and say what differs.\n"
+        "  trace     Tell the story of one predictor or one row.\n"
+        "  compare   Say what changed between two plans or two lockfiles.\n"
+        "  refresh   Run a plan on refreshed data and say whether the answer holds.\n"
+        "  handover  Pack a plan and its record, to be checked by someone else.\n"
+        "  receive   Check a bundle, unpack it, and compute its lockfile again.\n"
+        "  schema    Print the JSON Schema of plans or of lockfiles.\n"
+        "  guide     Explain the plan block by block, the rules, the record.\n"
         "\n"
-        "  Exit codes: 0 done, 2 unusable input, 3 a replay comes out differently.\n"
+        "  Exit codes: 0 done, 2 unusable input, 3 it comes out differently.\n"
     )
 
 

@@ -26,7 +26,7 @@ def running(api: SimpleNamespace, lock: Lock) -> SimpleNamespace:
     def run(plan: Path, data: Path | None, *, progress: Callable[[str], None]) -> SimpleNamespace:
         api.asked.append((plan, data))
         progress("selection")
-        return SimpleNamespace(lock=lock, status=lock.status)
+        return SimpleNamespace(lock=lock, status=lock.status, looks=())
 
     def write_lock(_: Lock, path: Path) -> None:
         path.write_text("# Written by beforehand.\nlock: 1\n", encoding="utf-8")
@@ -107,8 +107,8 @@ def test_run_as_json_has_stable_keys_and_no_nan(
     done = invoke("run", tmp_path / "hives.plan.yaml", "--json")
     result = json.loads(done.stdout, parse_constant=lambda word: pytest.fail(word))
     assert list(result) == [
-        "status", "record", "digest", "plan", "data", "answer", "ledger", "rows_removed", "predictors",
-        "alternatives", "rulings", "fits",
+        "status", "record", "digest", "plan", "seal", "looks", "data", "answer", "sealed_answer", "ledger",
+        "rows_removed", "predictors", "alternatives", "rulings", "fits",
     ]  # fmt: skip
     assert result["status"] == "adopted"
     assert result["answer"]["terms"][1]["coefficient"] == 0.2874410936

@@ -8,12 +8,17 @@ from typing import Annotated
 import typer
 
 from beforehand.cli.check import check
+from beforehand.cli.compare import compare
 from beforehand.cli.draft import draft
 from beforehand.cli.guard import TRACEBACK_VARIABLE, Guarded, Plain
 from beforehand.cli.guide import guide
+from beforehand.cli.handover import handover
+from beforehand.cli.receive import receive
+from beforehand.cli.refresh import refresh
 from beforehand.cli.replay import replay
 from beforehand.cli.run import run
 from beforehand.cli.schema import schema
+from beforehand.cli.seal import seal
 from beforehand.cli.trace import trace
 
 app = typer.Typer(
@@ -25,10 +30,10 @@ app = typer.Typer(
     rich_markup_mode=None,
     pretty_exceptions_enable=False,
     context_settings={"help_option_names": ["-h", "--help"]},
-    epilog="Exit codes: 0 done, 2 unusable input, 3 a replay comes out differently.",
+    epilog="Exit codes: 0 done, 2 unusable input, 3 it comes out differently.",
 )
 
-for command in (draft, check, run, replay, trace, schema, guide):
+for command in (draft, check, seal, run, replay, trace, compare, refresh, handover, receive, schema, guide):
     app.command(cls=Plain)(command)
 
 

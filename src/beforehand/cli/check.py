@@ -2,16 +2,23 @@
 
 from __future__ import annotations
 
+from pathlib import Path
 from typing import Annotated
 
 import typer
 
 from beforehand.cli import terminal
-from beforehand.cli.options import AsJson, DataFile, PlanFile
+from beforehand.cli.options import AsJson, DataFile
+from beforehand.faults import Fault, InputError
 
 
 def check(
-    plan: PlanFile,
+    plans: Annotated[
+        list[Path],
+        typer.Argument(
+            metavar="PLAN", help="The plan, a NAME.plan.yaml; there may be several.", show_default=False
+        ),
+    ],
     data: DataFile = None,
     full: Annotated[
         bool,
@@ -25,6 +32,24 @@ def check(
     left open, rules that never act, and what the size of the table allows. The values of the
     outcome are not used.
     """
+    if len(plans) > 1 and (full or as_json):
+        option = "--full" if full else "--json"
+        raise InputError(
+            [Fault(file=option, line=None, place="", what="is for one plan at a time", code="one_plan")]
+        )
+    faults: list[Fault] = []
+    for plan in plans:
+        try:
+            _check(plan, data, full=full, as_json=as_json)
+        except InputError as error:
+            # The faults of one plan do not hide those of the next.
+            faults += error.faults
+    if faults:
+        raise InputError(faults)
+
+
+def _check(plan: Path, data: Path | None, *, full: bool, as_json: bool) -> None:
+    """Check one plan and print what there is to know."""
     from beforehand import api
 
     if full and not as_json:

@@ -38,7 +38,8 @@ class Plain(TyperCommand):
 
     def collect_usage_pieces(self, ctx: Any) -> list[str]:
         """The parts of the usage line: options, then arguments as they are typed."""
-        return [piece[1:-1] if piece[:1] == "{" else piece for piece in super().collect_usage_pieces(ctx)]
+        pieces = super().collect_usage_pieces(ctx)
+        return [piece.removesuffix("...").strip("{}") if piece[:1] == "{" else piece for piece in pieces]
 
 
 @contextlib.contextmanager

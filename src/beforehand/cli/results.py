@@ -2,13 +2,16 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from beforehand.api import Replay
+    from beforehand.handing import Handover, Received
     from beforehand.lock import Lock
     from beforehand.plan import Plan
     from beforehand.review import Review
+    from beforehand.sealing import Look, Seal
 
 
 def check_result(reviewed: Review, plan: Plan | None) -> dict[str, Any]:
@@ -24,15 +27,18 @@ def check_result(reviewed: Review, plan: Plan | None) -> dict[str, Any]:
     return result if plan is None else result | {"plan": written_out(plan)}
 
 
-def run_result(lock: Lock, record: str) -> dict[str, Any]:
+def run_result(lock: Lock, record: str, looks: Sequence[Look] = ()) -> dict[str, Any]:
     """The answer of a run and what left; everything else is in the record."""
     return {
         "status": lock.status,
         "record": record,
         "digest": lock.digest,
         "plan": {"file": lock.plan.file, "decisions": lock.plan.decisions, "whole": lock.plan.whole},
+        "seal": lock.seal,
+        "looks": len(looks),
         "data": lock.data,
         "answer": lock.answer,
+        "sealed_answer": lock.sealed_answer,
         "ledger": lock.ledger,
         "rows_removed": lock.rows_removed,
         "predictors": lock.predictors,
@@ -45,10 +51,56 @@ def run_result(lock: Lock, record: str) -> dict[str, Any]:
     }
 
 
+def seal_result(seal: Seal, where: str, new: bool) -> dict[str, Any]:
+    """The seal in force, and whether it was made just now."""
+    return {
+        "new": new,
+        "file": where,
+        "seal": seal.number,
+        "sealed": seal.sealed,
+        "by": seal.by,
+        "seen": seal.seen,
+        "plan": {"file": seal.file, "decisions": seal.decisions, "whole": seal.whole},
+        "data": seal.data,
+        "commit": seal.commit,
+        "amendment": seal.amendment,
+        "digest": seal.digest,
+    }
+
+
 def replay_result(again: Replay) -> dict[str, Any]:
     """Whether a record came out the same, and every difference with its place."""
     return {
         "same": not again.differences,
         "same_bytes": again.same_bytes,
         "differences": again.differences,
+    }
+
+
+def handover_result(done: Handover) -> dict[str, Any]:
+    """What was packed, with the digest that the recipient should be told."""
+    return {
+        "bundle": str(done.bundle),
+        "sha256": done.sha256,
+        "members": done.members,
+        "data": done.data,
+        "rows": done.rows,
+        "share_safe": done.share_safe,
+        "cautions": done.cautions,
+    }
+
+
+def received_result(done: Received) -> dict[str, Any]:
+    """What was received, and whether its record came out again."""
+    return {
+        "folder": str(done.folder),
+        "program": done.program,
+        "plan": done.plan,
+        "members": done.members,
+        "chains": done.chains,
+        "lock": done.lock,
+        "safe": done.safe,
+        "replay": None if done.replay is None else replay_result(done.replay),
+        "aside": done.aside,
+        "not_replayed": done.not_replayed,
     }

@@ -47,7 +47,8 @@ def run(
     require_folder(record)
     refuse_to_replace(record, "\nlock: ", "a lockfile")
     with Progress(f"running {plan.name}", plain=progress, quiet=quiet) as told:
-        lock = api.run(plan, data, progress=told).lock
+        done = api.run(plan, data, progress=told)
+        lock = done.lock
         told("writing the record")
         api.write_lock(lock, record)
     if quiet:
@@ -56,8 +57,10 @@ def run(
         from beforehand.cli.machine import json_text
         from beforehand.cli.results import run_result
 
-        terminal.document(json_text(run_result(lock, str(record))))
+        terminal.document(json_text(run_result(lock, str(record), done.looks)))
         return
     from beforehand.screen.answer import answer_text
 
-    terminal.say(answer_text(lock, str(record), width=terminal.width(), colour=terminal.colour()))
+    terminal.say(
+        answer_text(lock, str(record), looks=done.looks, width=terminal.width(), colour=terminal.colour())
+    )

@@ -13,7 +13,7 @@ from pydantic import Field
 
 from beforehand.lock.answer import Answer
 from beforehand.lock.checks import Checks
-from beforehand.lock.record import Count, Digest, Name, PlainData, Record
+from beforehand.lock.record import Count, Digest, Figure, Name, PlainData, Record
 from beforehand.lock.trail import FitRecord, LedgerStage, PredictorFate, RowRemoved, RulingRecord
 
 LOCK_VERSION = 1
@@ -70,6 +70,13 @@ class DataRecord(Record):
     )
 
 
+class LearnedRecord(Record):
+    """What a run took from an earlier one instead of learning it anew."""
+
+    fills: Mapping[Name, Figure | str] = Field(description="Values of missing cells, by predictor.")
+    exponents: Mapping[Name, Figure] = Field(description="Box-Cox exponents, by column.")
+
+
 class Alternative(Record):
     """The same run with the changes that the plan declares, and whether the answer holds."""
 
@@ -103,12 +110,15 @@ class Lock(Record):
     A lock made in memory carries the digest ``""``; writing fills it in.
     """
 
-    left_out: ClassVar[frozenset[str]] = frozenset({"sealed_plan", "sealed_answer"})
+    left_out: ClassVar[frozenset[str]] = frozenset({"learned", "sealed_plan", "sealed_answer"})
 
     lock: Literal[1] = Field(description="Version of the lock's language.")
     plan: PlanRecord = Field(description="The plan that was run.")
     seal: SealRecord = Field(description="State of its seal.")
     data: DataRecord = Field(description="The table that was read.")
+    learned: LearnedRecord | None = Field(
+        default=None, description="What was taken from an earlier run instead of being learned anew."
+    )
     status: Status = Field(description="How the run ended.")
     answer: Answer | None = Field(description="What it came to; null when it stopped before any fit.")
     sealed_answer: Answer | None = Field(

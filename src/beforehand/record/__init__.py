@@ -2,6 +2,6 @@
 
 from __future__ import annotations
 
-from beforehand.record.whole import lock_of
+from beforehand.record.whole import UNSEALED, learned_from, learned_in, lock_of
 
-__all__ = ["lock_of"]
+__all__ = ["UNSEALED", "learned_from", "learned_in", "lock_of"]

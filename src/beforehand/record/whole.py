@@ -24,6 +24,7 @@ from beforehand.lock import (
     FitRows,
     FitTerm,
     FitTest,
+    LearnedRecord,
     LedgerStage,
     Lock,
     PlanRecord,
@@ -32,11 +33,12 @@ from beforehand.lock import (
     RulingRecord,
     SealRecord,
 )
-from beforehand.plan import decisions_digest, whole_digest, written_out
+from beforehand.plan import Plan, decisions_digest, whole_digest, written_out
 from beforehand.record.alternatives import differences_from
 from beforehand.record.checks import checks_of
 from beforehand.running import Trail
 from beforehand.steps.keeping import product_name
+from beforehand.steps.learned import NOTHING, Learned
 from beforehand.steps.records import RecordedFit
 from beforehand.steps.rulings import Ruling
 from beforehand.steps.state import IDENTITY, Rows
@@ -44,8 +46,18 @@ from beforehand.version import __version__
 
 Labels = Callable[[str], str]
 
+UNSEALED = SealRecord(state="unsealed", changes=())
 
-def lock_of(trail: Trail, alternatives: Mapping[str, Trail], *, file: str, labels: Labels = str) -> Lock:
+
+def lock_of(
+    trail: Trail,
+    alternatives: Mapping[str, Trail],
+    *,
+    file: str,
+    labels: Labels = str,
+    seal: SealRecord = UNSEALED,
+    sealed: Trail | None = None,
+) -> Lock:
     """The lock of a run and its declared alternatives.
 
     Parameters
@@ -57,20 +69,17 @@ def lock_of(trail: Trail, alternatives: Mapping[str, Trail], *, file: str, label
         Name of the plan's file, without a folder.
     labels : callable
         What stands for a row's label: the label, or a keyed hash of it.
+    seal : SealRecord
+        How the plan stands to its seals.
+    sealed : Trail, optional
+        The run of the plan as first sealed, beside an amended one.
     """
     plan, table = trail.plan, trail.table
-    answer = answer_of(trail)
+    answer = _answer(trail, labels)
     return Lock(
         lock=1,
-        plan=PlanRecord(
-            file=file,
-            title=plan.title,
-            question=plan.question,
-            decisions=decisions_digest(plan),
-            whole=whole_digest(plan),
-            written=written_out(plan),
-        ),
-        seal=SealRecord(state="unsealed", changes=()),
+        plan=_plan(plan, file),
+        seal=seal,
         data=DataRecord(
             file=table.file,
             fingerprint=table.fingerprint,
@@ -78,8 +87,11 @@ def lock_of(trail: Trail, alternatives: Mapping[str, Trail], *, file: str, label
             labelled=table.labelled,
             labels=plan.data.labels_in_lock,
         ),
+        learned=_learned(trail),
         status=_status(trail),
         answer=answer,
+        sealed_answer=None if sealed is None else _answer(sealed, labels),
+        sealed_plan=None if sealed is None else _plan(sealed.plan, file),
         **_body(trail, labels),
         alternatives={
             name: _alternative(other, plan.alternatives[name], trail, answer, labels)
@@ -95,6 +107,83 @@ def lock_of(trail: Trail, alternatives: Mapping[str, Trail], *, file: str, label
             statsmodels=version("statsmodels"),
         ),
         digest="",
+    )
+
+
+def _plan(plan: Plan, file: str) -> PlanRecord:
+    """A plan with its digests and all defaults written out."""
+    return PlanRecord(
+        file=file,
+        title=plan.title,
+        question=plan.question,
+        decisions=decisions_digest(plan),
+        whole=whole_digest(plan),
+        written=written_out(plan),
+    )
+
+
+def _answer(trail: Trail, labels: Labels) -> Answer | None:
+    """The answer; where its sentence of the nearest ruling names a row, the label as the plan lets it."""
+    answer = answer_of(trail)
+    if answer is None or answer.fragility is None:
+        return answer
+    nearest = next(ruling for ruling in trail.rulings if ruling.id == answer.fragility.ruling)
+    says = _with_label(answer.fragility.says, nearest, labels)
+    return answer.model_copy(update={"fragility": answer.fragility.model_copy(update={"says": says})})
+
+
+def _is_about_a_row(ruling: Ruling) -> bool:
+    """Whether the subject of a ruling is a row."""
+    return ruling.ground.startswith("row_") or ruling.ground == "cap_reached"
+
+
+def _with_label(says: str, ruling: Ruling, labels: Labels) -> str:
+    """A sentence about a ruling in which a row's label stands as the plan lets it."""
+    if not _is_about_a_row(ruling):
+        return says
+    return says.replace(f"ow {ruling.subject} ", f"ow {labels(ruling.subject)} ")
+
+
+def _learned(trail: Trail) -> LearnedRecord | None:
+    """What the run took from an earlier one; the outcome goes by its column here."""
+    if not trail.learned.fills and not trail.learned.exponents:
+        return None
+    return LearnedRecord(
+        fills=dict(trail.learned.fills),
+        exponents={name or trail.plan.outcome.column: e for name, e in trail.learned.exponents.items()},
+    )
+
+
+def learned_from(lock: Lock) -> Learned:
+    """What a lock's run learned, to be used again.
+
+    Fills by regression are not among it: their coefficients are not in the record.
+    """
+    exponents = {
+        name: fate.exponent
+        for name, fate in lock.predictors.items()
+        if fate.transform == "box_cox" and fate.exponent is not None
+    }
+    if lock.answer is not None and lock.answer.outcome.exponent is not None:
+        exponents[""] = lock.answer.outcome.exponent
+    return Learned(
+        fills={
+            fill.predictor: fill.value
+            for fill in lock.checks.fills
+            if fill.method in ("mean", "median", "most_common") and fill.value is not None
+        },
+        exponents=exponents,
+    )
+
+
+def learned_in(lock: Lock) -> Learned:
+    """What a lock's run did not learn anew itself."""
+    if lock.learned is None:
+        return NOTHING
+    outcome = str(lock.plan.written["outcome"]["column"])  # type: ignore[index,call-overload]
+    return Learned(
+        fills=lock.learned.fills,
+        exponents={"" if name == outcome else name: e for name, e in lock.learned.exponents.items()},
     )
 
 
@@ -123,7 +212,7 @@ def _alternative(
     other: Trail, changes: Mapping[str, Any], main: Trail, main_answer: Answer | None, labels: Labels
 ) -> Alternative:
     """The same run under declared changes, held against the main answer."""
-    answer = answer_of(other)
+    answer = _answer(other, labels)
     differences = differences_from(main, main_answer, other, answer)
     return Alternative(
         changes=changes,
@@ -189,11 +278,8 @@ def _ends(ruling: Ruling, name: str) -> bool:
 
 def _ruling(ruling: Ruling, trail: Trail, labels: Labels) -> RulingRecord:
     """A ruling with its sentence; a row's label stands as the plan lets it."""
-    is_row = ruling.ground.startswith("row_") or ruling.ground == "cap_reached"
-    subject = labels(ruling.subject) if is_row else ruling.subject
-    says = wording.sentence(ruling)
-    if is_row and subject != ruling.subject:
-        says = says.replace(f"ow {ruling.subject} ", f"ow {subject} ")
+    subject = labels(ruling.subject) if _is_about_a_row(ruling) else ruling.subject
+    says = _with_label(wording.sentence(ruling), ruling, labels)
     return RulingRecord(
         id=ruling.id,
         step=ruling.step,
@@ -210,6 +296,12 @@ def _ruling(ruling: Ruling, trail: Trail, labels: Labels) -> RulingRecord:
         because=ruling.because,
         says=says,
     )
+
+
+def _why(why: str, labels: Labels) -> str:
+    """What a fit was asked for; a row that it leaves out is named as the plan lets it."""
+    start = "without row "
+    return start + labels(why.removeprefix(start)) if why.startswith(start) else why
 
 
 def _fit(recorded: RecordedFit, trail: Trail, digests: _RowDigests) -> FitRecord:
@@ -235,7 +327,7 @@ def _fit(recorded: RecordedFit, trail: Trail, digests: _RowDigests) -> FitRecord
     return FitRecord(
         id=recorded.id,
         step=recorded.step,
-        why=recorded.why,
+        why=_why(recorded.why, digests.labels),
         rows=FitRows(n=fit.n, digest=digests.of(model.rows)),
         outcome=FitOutcome(
             column=factor.column,
@@ -265,7 +357,7 @@ class _RowDigests:
 
     def __init__(self, trail: Trail, labels: Labels) -> None:
         self._source = trail.source
-        self._labels = labels
+        self.labels = labels
         self._lines: NDArray[np.object_] | None = None
         self._known: dict[Rows, str] = {}
 
@@ -274,7 +366,7 @@ class _RowDigests:
         known = self._known.get(rows)
         if known is None:
             if self._lines is None:
-                self._lines = np.array(list(map(self._labels, self._source.labels())), dtype=object)
+                self._lines = np.array(list(map(self.labels, self._source.labels())), dtype=object)
             lines = self._lines if not rows.gone else np.delete(self._lines, rows.gone)
             text = "\n".join(lines.tolist())
             if "\\" in text or text.count("\n") >= max(1, len(lines)):

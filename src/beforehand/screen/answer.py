@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import shlex
+from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from beforehand.screen.alternatives import alternative_lines, alternatives_title
@@ -14,14 +15,18 @@ from beforehand.screen.layout import INDENT, Section, Tone, page, shorten, shown
 from beforehand.screen.planned import Planned, planned
 from beforehand.screen.quality import quality_lines, rows_used
 from beforehand.screen.removals import kept_lines, removal_lines
+from beforehand.screen.seals import looks_sentence, sealed_lines
 
 if TYPE_CHECKING:
     from beforehand.lock import Answer, Lock, RulingRecord
+    from beforehand.sealing import Look
 
 MOST_SEAL_CHANGES = 5
 
 
-def answer_text(lock: Lock, record: str, *, width: int = 100, colour: bool = False) -> str:
+def answer_text(
+    lock: Lock, record: str, *, looks: Sequence[Look] = (), width: int = 100, colour: bool = False
+) -> str:
     """The answer as one screen of text.
 
     Parameters
@@ -30,6 +35,8 @@ def answer_text(lock: Lock, record: str, *, width: int = 100, colour: bool = Fal
         The record of the run.
     record : str
         Where the record stands, as the next commands should name it.
+    looks : sequence of Look
+        Runs on record so far, this one the last.
     width : int
         Cells of a line; 60 to 140 look right.
     colour : bool
@@ -55,10 +62,12 @@ def answer_text(lock: Lock, record: str, *, width: int = 100, colour: bool = Fal
         sections.append(Section(title="Look twice", lines=lines, tone="careful"))
     if lock.alternatives:
         sections.append(Section(title=alternatives_title(lock), lines=alternative_lines(lock, width)))
+    if lock.seal.state == "amended":
+        sections.append(Section(title="As first sealed", lines=sealed_lines(lock, width)))
     if lock.answer is not None:
         lines = tuple(line for text in lock.answer.cautions for line in wrapped(text, width, first="  - "))
         sections.append(Section(title="Cautions", lines=lines, tone="careful"))
-    sections.append(_record(lock, record, width))
+    sections.append(_record(lock, record, looks, width))
     return page([section for section in sections if section.lines], colour=colour)
 
 
@@ -165,10 +174,11 @@ def _rows(lock: Lock, width: int) -> tuple[str, ...]:
     return wrapped(f"Rows used: {rows_used(lock, used)}.", width)
 
 
-def _record(lock: Lock, record: str, width: int) -> Section:
+def _record(lock: Lock, record: str, looks: Sequence[Look], width: int) -> Section:
     """Where everything stands, and what to type next."""
     size = f"{count(len(lock.fits), 'fit')} and {count(len(lock.rulings), 'ruling')}"
-    lines = list(wrapped(f"{record} holds {size}. {seal_sentence(lock)}", width))
+    told = f"{record} holds {size}. {seal_sentence(lock)} {looks_sentence(looks)}".strip()
+    lines = list(wrapped(told, width))
     name, subject = shlex.quote(shown(record)), example_subject(lock)
     # Commands are never broken over lines: one that is copied must work.
     traced = "" if subject is None else f"{INDENT}beforehand trace {name} {shlex.quote(shown(subject))}"

@@ -19,6 +19,7 @@ from beforehand.fit.moments import ArraySource, moments_of
 from beforehand.fit.tableau import tableau_of
 from beforehand.plan import FillValue, Plan
 from beforehand.steps.keeping import Keeping, product_name
+from beforehand.steps.learned import NOTHING, Learned
 from beforehand.steps.rulings import Ruling, Rulings
 from beforehand.steps.state import RowDeparture, Rows, State
 from beforehand.table import Column, Table
@@ -76,7 +77,9 @@ class Base:
     with_outcome: int
 
 
-def missing_data(plan: Plan, table: Table, *, declared: bool) -> tuple[State, Base, tuple[Ruling, ...]]:
+def missing_data(
+    plan: Plan, table: Table, *, declared: bool, learned: Learned = NOTHING
+) -> tuple[State, Base, tuple[Ruling, ...]]:
     """Remove predictors that are too empty, fill what has a fill, remove what is still incomplete.
 
     Parameters
@@ -97,7 +100,7 @@ def missing_data(plan: Plan, table: Table, *, declared: bool) -> tuple[State, Ba
     if declared and rows:
         state = _too_empty(state, plan, masks, rows, rulings)
         if not state.status:
-            fills = _fill(state, plan, table, masks, has_outcome, rulings)
+            fills = _fill(state, plan, table, masks, has_outcome, rulings, learned)
     filled = {fill.predictor for fill in fills}
     incomplete = np.zeros(table.n_rows, dtype=bool)
     for name in state.working:
@@ -181,7 +184,13 @@ def _too_empty(state: State, plan: Plan, masks: Mapping[str, Mask], rows: int, r
 
 
 def _fill(
-    state: State, plan: Plan, table: Table, masks: Mapping[str, Mask], has_outcome: Mask, rulings: Rulings
+    state: State,
+    plan: Plan,
+    table: Table,
+    masks: Mapping[str, Mask],
+    has_outcome: Mask,
+    rulings: Rulings,
+    learned: Learned,
 ) -> list[Filled]:
     """Fills in plan order of the predictors; each learned from what was observed."""
     made: list[Filled] = []
@@ -193,11 +202,14 @@ def _fill(
         column = table.columns[name]
         observed = has_outcome & ~masks[name]
         positions = np.flatnonzero(masks[name]).astype(np.int64)
+        known = learned.fills.get(name) if how != "regression" else None
+        method = "value" if isinstance(how, FillValue) else how
+        if known is not None:
+            how = FillValue(value=known)
         if not observed.any() and not isinstance(how, FillValue):
             rulings.add("missing_data.fill", name, "nothing_to_learn_from")
             continue
         values, shown = _learned(how, column, observed, positions, state, table, masks, has_outcome)
-        method = "value" if isinstance(how, FillValue) else how
         made.append(Filled(predictor=name, method=method, positions=positions, values=values, shown=shown))
         rulings.add(
             f"missing_data.fill.{name}", name, "filled",

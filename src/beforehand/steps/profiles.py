@@ -14,7 +14,9 @@ from beforehand.steps.state import Model, Transform, factor_of
 from beforehand.steps.workings import Workings
 
 
-def learned(workings: Workings, model: Model, name: str, rung: str, outcome: str) -> Transform:
+def learned(
+    workings: Workings, model: Model, name: str, rung: str, outcome: str, known: float | None = None
+) -> Transform:
     """A rung with its exponent learned from a model.
 
     Parameters
@@ -27,9 +29,13 @@ def learned(workings: Workings, model: Model, name: str, rung: str, outcome: str
         Only ``box_cox`` has an exponent to learn.
     outcome : str
         The outcome's column.
+    known : float, optional
+        The exponent, where it was learned before and is not to be learned anew.
     """
     if rung != "box_cox":
         return Transform(rung)
+    if known is not None:
+        return Transform(rung, known)
     if name:
         return Transform(rung, exponents.predictor_exponent(_profile(workings, model, name, name)))
     values = workings.source(model.rows).raw(outcome)

@@ -25,6 +25,7 @@ from beforehand.steps.bench import Checked, Comparison, Fitted, Linked, Measures
 from beforehand.steps.comparisons import compared
 from beforehand.steps.designing import Designer
 from beforehand.steps.keeping import Keeping
+from beforehand.steps.learned import NOTHING, Learned
 from beforehand.steps.linking import linked_of
 from beforehand.steps.profiles import learned
 from beforehand.steps.records import CollinearityRecord, Record, RecordedCheck, RecordedFit
@@ -47,6 +48,8 @@ class RecordingBench:
         Cluster of each row, where the plan asks for clustered errors.
     progress : callable or None
         Hears what is being done, a few words at a time.
+    learned : Learned
+        Exponents that are not learned anew.
     """
 
     def __init__(
@@ -57,6 +60,7 @@ class RecordingBench:
         order: FloatArray | None = None,
         groups: FloatArray | None = None,
         progress: Callable[[str], None] | None = None,
+        learned: Learned = NOTHING,
     ) -> None:
         self.step = ""
         self.record = Record()
@@ -64,6 +68,7 @@ class RecordingBench:
         self._base = source
         self._order, self._groups = order, groups
         self._progress = progress
+        self._learned = learned
         self._designer = Designer(plan, source)
         self._workings = Workings(source, self._tell)
         self._fitted: dict[Model, Fitted] = {}
@@ -109,9 +114,7 @@ class RecordingBench:
 
     def two_valued(self, name: str, rows: Rows) -> bool:
         """Whether a numeric predictor has fewer than three values in these rows."""
-        values = self._workings.source(rows).raw(name)
-        low, high = values.min(), values.max()
-        return bool(np.all((values == low) | (values == high)))
+        return self._workings.two_valued(name, rows)
 
     def domain(self, name: str, rung: str, rows: Rows) -> str:
         """Why a rung cannot be applied; '' when it can. The outcome goes by the name ''."""
@@ -120,7 +123,8 @@ class RecordingBench:
 
     def learn(self, model: Model, name: str, rung: str) -> Transform:
         """The rung with its exponent learned from this model."""
-        return learned(self._workings, model, name, rung, self._plan.outcome.column)
+        known = self._learned.exponents.get(name)
+        return learned(self._workings, model, name, rung, self._plan.outcome.column, known)
 
     def curvature(self, fitted: Fitted, name: str, alpha: float) -> Checked:
         """T test of the predictor's added square about its mean."""
@@ -322,8 +326,6 @@ class RecordingBench:
     def moments(self, model: Model) -> Moments:
         """Exact moments of a model's columns and outcome in its rows."""
         return self._workings.moments(model.rows, (*model.keys, model.outcome))
-
-    # -- inside ------------------------------------------------------------------------------
 
     def _keep(self, model: Model, fit: Fit, why: str) -> Fitted:
         fitted = Fitted(f"F{len(self.record.fits) + 1:03d}", model, fit)

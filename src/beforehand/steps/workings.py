@@ -45,6 +45,12 @@ class Workings:
         self._tableaus: dict[Model, Tableau] = {}
         self._row_values: dict[Model, RowValues] = {}
 
+    def two_valued(self, column: str, rows: Rows) -> bool:
+        """Whether a number has fewer than three values in these rows."""
+        values = self.source(rows).raw(column)
+        low, high = values.min(), values.max()
+        return bool(np.all((values == low) | (values == high)))
+
     def mean(self, key: Key) -> float:
         """Mean of a column over the base."""
         assert self._moments is not None

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 from collections.abc import Mapping
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -25,7 +26,12 @@ if TYPE_CHECKING:
 IN_MEMORY = "table"
 
 
-def read_table(plan: Plan, path: str | os.PathLike[str] | None = None) -> Table:
+def read_table(
+    plan: Plan,
+    path: str | os.PathLike[str] | None = None,
+    *,
+    columns: Mapping[str, str] | None = None,
+) -> Table:
     """Read the table of a plan under its contract.
 
     Parameters
@@ -33,6 +39,8 @@ def read_table(plan: Plan, path: str | os.PathLike[str] | None = None) -> Table:
     plan : Plan
     path : path, optional
         A file anywhere, instead of the one that the plan names inside its own folder.
+    columns : mapping of str to str, optional
+        Names of the file's columns by those of the plan, where they differ; faults name the file's own.
 
     Returns
     -------
@@ -43,6 +51,8 @@ def read_table(plan: Plan, path: str | os.PathLike[str] | None = None) -> Table:
     DataError
         With every fault of the table.
     """
+    if columns:
+        return _under_other_names(plan, path, columns)
     file, name = _located(plan, path)
     content = content_of(file, name)
     wanted = wanted_of(plan)
@@ -60,6 +70,25 @@ def read_table(plan: Plan, path: str | os.PathLike[str] | None = None) -> Table:
                 content = content_of(file, name)
     cells = read_cells(text_of(content, plan.data, name), plan.data, wanted, name)
     return _typed(plan, cells.columns, cells.lines, wanted, name)
+
+
+def _under_other_names(plan: Plan, path: str | os.PathLike[str] | None, columns: Mapping[str, str]) -> Table:
+    """The table of a file whose columns have names of their own; the strict way, whatever its size."""
+    file, name = _located(plan, path)
+    own = {column: columns.get(column, column) for column in wanted_of(plan)}
+    renamed: dict[str, Wanted] = {}
+    for column, want in wanted_of(plan).items():
+        if own[column] in renamed:
+            what = f"is read twice: as {renamed[own[column]].name!r} and as {column!r}"
+            raise DataError([fault(name, 1, own[column], what, "repeated_column")])
+        renamed[own[column]] = want
+    cells = read_cells(text_of(content_of(file, name), plan.data, name), plan.data, renamed, name)
+    found = {column: cells.columns[own[column]] for column in own}
+    try:
+        return _typed(plan, found, cells.lines, wanted_of(plan), name)
+    except DataError as error:
+        faults = [replace(one, place=own.get(one.place, one.place)) for one in error.faults]
+        raise DataError(faults) from None
 
 
 def _located(plan: Plan, path: str | os.PathLike[str] | None) -> tuple[Path, str]:
