@@ -236,33 +236,3 @@ def test_commands_can_be_copied(hives: dict[str, Any], lock_of: LockOf) -> None:
     assert text.endswith(
         "  beforehand trace 'my plans/hives.lock.yaml' rain\n  beforehand replay 'my plans/hives.lock.yaml'\n"
     )
-
-
-FOREIGN = (
-    "Sig.",
-    "Std. Error",
-    "Unstandardized",
-    "Model Summary",
-    "Tolerance",
-    "Pr(>|t|)",
-    "P>|t|",
-    "Prob > F",
-    "Root MSE",
-    "_cons",
-    "(Intercept)",
-    "Residual standard error",
-    "Multiple R-squared",
-    "Number of obs",
-    "Signif. codes",
-    "No. Observations",
-    "Df Residuals",
-    "Dep. Variable",
-    "***",
-    "~",
-)
-
-
-@pytest.mark.parametrize("label", FOREIGN)
-def test_no_label_of_another_program_appears(label: str, hives: dict[str, Any], lock_of: LockOf) -> None:
-    """The answer has its own words."""
-    assert label not in answer_text(lock_of(hives), RECORD)
