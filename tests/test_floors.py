@@ -13,7 +13,7 @@ ROOT = Path(__file__).parents[1] / "src" / "beforehand"
 
 # From the ground floor up; a module imports from its own floor or one before it.
 FLOORS = (
-    ("version", "faults"),
+    ("version", "faults", "names"),
     ("plan",),
     ("table",),
     ("fit",),

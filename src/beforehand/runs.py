@@ -15,6 +15,7 @@ from beforehand.faults import Fault, PlanError
 from beforehand.lock import Lock
 from beforehand.lock.files import write_whole
 from beforehand.lock.writing import sealed_lock
+from beforehand.names import beside
 from beforehand.plan import Plan, PlanOrigin, plan_from_mapping, with_changes
 from beforehand.record import UNSEALED, lock_of
 from beforehand.running import Progress, Trail, run_steps
@@ -25,7 +26,6 @@ from beforehand.table import Table, read_table, table_from_frame
 if TYPE_CHECKING:
     import pandas as pd
 
-PLAN_SUFFIX = ".plan.yaml"
 LOCK_SUFFIX = ".lock.yaml"
 KEY_SUFFIX = ".labels.key"
 
@@ -103,8 +103,7 @@ def lock_path(plan: Plan) -> Path:
         raise PlanError(
             [Fault(file="plan", line=None, place="", what="was not read from a file", code="no_file")]
         )
-    path = Path(plan.origin.path)
-    return path.with_name(path.name.removesuffix(PLAN_SUFFIX).removesuffix(".yaml") + LOCK_SUFFIX)
+    return beside(plan.origin.path, LOCK_SUFFIX)
 
 
 def reader(
@@ -151,7 +150,11 @@ def hashed_labels(plan: Plan) -> Callable[[str], str]:
     An unkeyed hash of a guessable label can be undone by guessing, so the key is a file of its own
     beside the plan, made once and not to be handed on with the lock.
     """
-    key = _label_key(plan)
+    return keyed(_label_key(plan))
+
+
+def keyed(key: bytes) -> Callable[[str], str]:
+    """The hash of a label under a key."""
     return lambda label: hmac.new(key, label.encode(), hashlib.sha256).hexdigest()[:16]
 
 

@@ -82,8 +82,18 @@ def test_results_for_programs_have_stable_keys(invoke: Invoke, plan: Path, tmp_p
     assert (packed["data"], packed["rows"]) == ({"file": "racks.csv", "labels": "shown"}, 60)
     got = json.loads(invoke("receive", bundle, "-d", tmp_path / "got", "--json").stdout)
     assert list(got) == [
-        "folder", "program", "plan", "members", "chains", "lock", "safe", "replay", "aside", "not_replayed",
-    ]  # fmt: skip
+        "folder",
+        "program",
+        "plan",
+        "members",
+        "chains",
+        "lock",
+        "safe",
+        "replay",
+        "aside",
+        "not_replayed",
+        "own_lock",
+    ]
     assert got["replay"] == {"same": True, "same_bytes": True, "differences": []}
 
 

@@ -250,6 +250,9 @@ def test_the_recipients_own_table_under_other_names(racks: Any, plan: Path, tmp_
     for number, given in enumerate((names, mapping)):
         done = beforehand.receive(output, tmp_path / f"got{number}", data=table, columns=given)
         assert done.replay == Replay(same_bytes=True, differences=())
+        own = beforehand.read_lock(tmp_path / f"got{number}" / done.own_lock)
+        assert dict(own.data.columns) == names
+        assert own.answer == beforehand.read_lock(tmp_path / f"got{number}" / done.lock).answer
     text = table.read_text(encoding="utf-8")
     table.write_text(text.replace("263.47", "26x").replace("58.125", "61"), encoding="utf-8")
     with pytest.raises(DataError) as caught:

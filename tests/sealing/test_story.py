@@ -81,7 +81,7 @@ def test_the_whole_story(plan, invoke):
         "--kind", "gap", "--expected-effect", "one predictor more",
     )  # fmt: skip
     assert amended.exit_code == 0, amended.stderr
-    assert "alpha from 0.05 to 0.8: predictors pass more easily: looser." in " ".join(amended.stdout.split())
+    assert "alpha from 0.05 to 0.80: predictors pass more easily: looser." in " ".join(amended.stdout.split())
     third = " ".join(invoke("run", plan).stdout.split())
     assert "The plan was amended after its seal" in third
     assert "As first sealed" in third

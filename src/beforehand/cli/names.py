@@ -4,13 +4,12 @@ from __future__ import annotations
 
 from pathlib import Path
 
-_PLAN_ENDS = (".plan.yaml", ".plan.yml", ".yaml", ".yml")
+from beforehand.names import beside
 
 
 def lock_beside(plan: Path) -> Path:
     """``NAME.lock.yaml`` beside ``NAME.plan.yaml``."""
-    end = next((end for end in _PLAN_ENDS if plan.name.endswith(end) and plan.name != end), "")
-    return plan.with_name(plan.name.removesuffix(end) + ".lock.yaml")
+    return beside(plan, ".lock.yaml")
 
 
 def plan_beside(table: Path) -> Path:

@@ -103,4 +103,5 @@ def received_result(done: Received) -> dict[str, Any]:
         "replay": None if done.replay is None else replay_result(done.replay),
         "aside": done.aside,
         "not_replayed": done.not_replayed,
+        "own_lock": done.own_lock,
     }

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import secrets
 import zipfile
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
@@ -21,16 +22,19 @@ from beforehand.handing.tables import (
     own_table,
     plans_read,
 )
-from beforehand.lock import Lock, read_lock
+from beforehand.lock import Lock, read_lock, write_lock
 from beforehand.lock.difference import Replay, replay_of
 from beforehand.plan import Plan, plan_from_mapping, read_plan, whole_digest
 from beforehand.record import learned_in
 from beforehand.running import Progress
-from beforehand.runs import run_plan
+from beforehand.runs import KEY_BYTES, keyed, run_plan
 from beforehand.sealing import Standing, beside
 
 FINGERPRINT_ASIDE = "the table's fingerprint, which is taken over the labels themselves"
 LABELS_ASIDE = "row labels and digests of them, since a hash cannot be made again without its key"
+# The lock of a recipient's own table, beside the one that was received.
+OWN_LOCK = ".received.lock.yaml"
+
 COLUMNS_ASIDE = "the names of the table's own columns"
 
 
@@ -57,6 +61,8 @@ class Received:
         What the replay could not compare, and why.
     not_replayed : str or None
         Why it was not.
+    own_lock : str or None
+        Name of the lock of the recipient's own table, where its columns have other names.
     """
 
     folder: Path
@@ -69,6 +75,7 @@ class Received:
     replay: Replay | None
     aside: tuple[str, ...]
     not_replayed: str | None
+    own_lock: str | None = None
 
 
 def receive_bundle(
@@ -95,14 +102,18 @@ def receive_bundle(
         raise InputError([Fault(file=str(bundle), line=None, place="columns", what=what, code="receive")])
     with opened(bundle) as (archive, manifest):
         names = [*sorted(manifest.members), MANIFEST]
-        require_free(folder, names)
+        own_name = beside(manifest.plan, OWN_LOCK).name
+        require_free(folder, names if columns is None else [*names, own_name])
         with beside_folder(folder) as scratch:
-            looked = _looked_at(archive, manifest, scratch, bundle, data, columns, progress)
+            looked, own = _looked_at(archive, manifest, scratch, bundle, data, columns, progress)
             # Afresh, so that what is put in place is the bundle's own and nothing that came beside it.
             fresh = scratch / "fresh"
             unpack(archive, names, fresh)
+            if own is not None:
+                write_lock(own, fresh / own_name)
+                names.append(own_name)
             place(fresh, folder, names)
-    return replace(looked, folder=folder)
+    return replace(looked, folder=folder, own_lock=None if own is None else own_name)
 
 
 def chains_hold(plan_path: Path) -> None:
@@ -120,8 +131,8 @@ def _looked_at(
     data: Path | None,
     columns: Mapping[str, str] | str | os.PathLike[str] | None,
     progress: Progress | None,
-) -> Received:
-    """What a bundle holds, read and computed in a folder of its own."""
+) -> tuple[Received, Lock | None]:
+    """What a bundle holds, read and computed in a folder of its own; the lock of a table of other names."""
     there = scratch / "looked-at"
     unpack(archive, sorted(manifest.members), there)
     try:
@@ -134,10 +145,10 @@ def _looked_at(
         if chains:
             chains_hold(there / manifest.plan)
         lock = None if manifest.lock is None else _lock_of(there, manifest.lock, plan)
-        replayed, aside, reason = _replayed(manifest, there, plan, lock, data, columns, progress)
+        replayed, aside, reason, own = _replayed(manifest, there, plan, lock, data, columns, progress)
     except InputError as error:
         raise type(error)([_renamed(fault, there, bundle) for fault in error.faults]) from None
-    return Received(
+    received = Received(
         folder=there,
         program=manifest.program,
         plan=manifest.plan,
@@ -149,6 +160,7 @@ def _looked_at(
         aside=aside,
         not_replayed=reason,
     )
+    return received, own
 
 
 def _renamed(fault: Fault, there: Path, bundle: Path) -> Fault:
@@ -177,25 +189,34 @@ def _replayed(
     data: Path | None,
     columns: Mapping[str, str] | str | os.PathLike[str] | None,
     progress: Progress | None,
-) -> tuple[Replay | None, tuple[str, ...], str | None]:
-    """The lock computed again where a table is at hand, what was set aside, and why it was not."""
+) -> tuple[Replay | None, tuple[str, ...], str | None, Lock | None]:
+    """The lock computed again where a table is at hand, what was set aside, and why it was not.
+
+    Last comes the lock of a table whose columns have other names, with these names in it.
+    """
     first = None if lock is None or lock.sealed_plan is None else plan_from_mapping(lock.sealed_plan.written)
     names = _names(columns, plan, first)
     if lock is None:
         reason = (
             "the bundle holds no lock" if manifest.safe is None else "a share-safe copy cannot be replayed"
         )
-        return None, (), reason
+        return None, (), reason, None
     hashed = data is None and manifest.data is not None and manifest.data.labels == "hashed"
     if data is not None:
         read: Read = own_table(data, names)
     elif manifest.data is None:
-        return None, (), "the bundle holds no table; give one by --data"
+        return None, (), "the bundle holds no table; give one by --data", None
     else:
         file = there / manifest.data.file
         read = hashed_table(file) if hashed else own_table(file, {})
     standing = Standing(record=lock.seal, sealed=first)
     new = run_plan(plan, read, progress, standing, learned_in(lock), labels=str).lock
+    own = None
+    if names:
+        # Labels that the plan hides are hidden here too, by a key that nobody keeps.
+        hide = keyed(secrets.token_bytes(KEY_BYTES)) if plan.data.labels_in_lock == "hashed" else str
+        mine = run_plan(plan, read, progress, standing, learned_in(lock), labels=hide).lock
+        own = mine.model_copy(update={"data": mine.data.model_copy(update={"columns": names})})
     # Names of columns are the table's own, as the file's place is.
     new = new.model_copy(update={"data": new.data.model_copy(update={"columns": lock.data.columns})})
     aside = [COLUMNS_ASIDE] if names else []
@@ -209,7 +230,7 @@ def _replayed(
         else:
             fingerprint = {"fingerprint": lock.data.fingerprint}
             new = new.model_copy(update={"data": new.data.model_copy(update=fingerprint)})
-    return replay_of(lock, new), tuple(aside), None
+    return replay_of(lock, new), tuple(aside), None, own
 
 
 def _names(

@@ -85,6 +85,9 @@ def received_text(done: Received, *, width: int = 100, colour: bool = False) -> 
         reason = wrapped(f"{(done.not_replayed or '').capitalize()}.", width)
         return f"{text}\n{page([Section(title='Not computed again', lines=reason)], colour=colour)}"
     text += "\n" + replay_text(done.replay, done.lock or "", width=width, colour=colour)
+    if done.own_lock is not None:
+        own = f"{done.own_lock} is the record of the table given, with the names of its columns."
+        text += "".join(f"{line}\n" for line in wrapped(own, width))
     if done.aside:
         text += "".join(f"{line}\n" for line in wrapped(f"Not compared: {'; '.join(done.aside)}.", width))
     return text

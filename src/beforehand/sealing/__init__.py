@@ -4,9 +4,9 @@ from __future__ import annotations
 
 from pathlib import Path
 
+from beforehand.names import beside, looks_path, seal_path
 from beforehand.sealing.looks import Look, add_look, plans_that_met, read_looks
 from beforehand.sealing.making import seal_plan
-from beforehand.sealing.names import beside, looks_path, seal_path
 from beforehand.sealing.seals import KINDS, SEEN, Amendment, Kind, Seal, Seen, append_seal, read_seals
 from beforehand.sealing.standing import Standing, standing_of
 

@@ -8,8 +8,8 @@ from pathlib import Path
 
 from beforehand.comparing import plan_changes
 from beforehand.faults import DataError, Fault, InputError, did_you_mean
+from beforehand.names import seal_path
 from beforehand.plan import Plan, decisions_digest, whole_digest
-from beforehand.sealing.names import seal_path
 from beforehand.sealing.seals import KINDS, SEEN, Amendment, Seal, append_seal, read_seals
 from beforehand.table import read_table
 
