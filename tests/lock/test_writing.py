@@ -23,7 +23,8 @@ def test_a_lock_begins_with_its_version_and_plan(lock: Lock) -> None:
     """The head of the file, line by line."""
     digest = "sha256:" + "0123456789abcdef" * 4
     assert lock_text(lock).split("\nstatus:")[0].split("\n") == [
-        "# Written by beforehand. Do not edit: the digest at the end covers every line.",
+        "# Written by beforehand. "
+        "Do not edit: the digest at the end covers every line above the environment.",
         "lock: 1",
         "plan:",
         "  file: cold-rooms.plan.yaml",

@@ -23,7 +23,9 @@ from beforehand.lock.record import Plain, Record
 from beforehand.lock.strings import string_text
 from beforehand.lock.trail import FitRecord, PredictorFate, RulingRecord
 
-HEADER = "# Written by beforehand. Do not edit: the digest at the end covers every line.\n"
+HEADER = (
+    "# Written by beforehand. Do not edit: the digest at the end covers every line above the environment.\n"
+)
 
 # Where the digest stops: what a run was made with may differ while the record is the same.
 DIGEST_ENDS_AT = "environment:"
