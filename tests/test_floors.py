@@ -27,6 +27,7 @@ FLOORS = (
     ("refreshing",),
     ("runs",),
     ("handing",),
+    ("exchange",),
     ("api",),
     ("screen",),
     ("cli", "__main__", "__init__"),

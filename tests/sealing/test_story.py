@@ -181,6 +181,18 @@ def test_a_broken_chain_is_refused_before_anything_is_computed(plan, invoke):
     assert lock.read_bytes() == before
 
 
+@pytest.mark.skipif(os.name == "nt" or os.geteuid() == 0, reason="every folder can be written to")
+def test_a_look_that_cannot_be_registered_is_not_taken(plan, invoke, tmp_path_factory):
+    """Where the register cannot be written the run is refused before it is made."""
+    lock = tmp_path_factory.mktemp("elsewhere") / "jobs.lock.yaml"
+    plan.parent.chmod(0o500)
+    done = invoke("run", plan, "-o", lock)
+    plan.parent.chmod(0o700)
+    assert done.exit_code == 2
+    assert "does not permit writing" in done.stderr
+    assert not lock.exists()
+
+
 def test_the_table_may_come_later(plan, invoke):
     """A plan can be sealed before there are any data; the commit of its repository stands in the seal."""
     plan.with_name("jobs-q1.csv").unlink()

@@ -5,6 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 
 from beforehand.names import beside, looks_path, seal_path
+from beforehand.sealing.holding import require_writable
 from beforehand.sealing.looks import Look, add_look, plans_that_met, read_looks
 from beforehand.sealing.making import seal_plan
 from beforehand.sealing.seals import KINDS, SEEN, Amendment, Kind, Seal, Seen, append_seal, read_seals
@@ -26,6 +27,7 @@ __all__ = [
     "plans_that_met",
     "read_looks",
     "read_seals",
+    "require_writable",
     "seal_path",
     "seal_plan",
     "standing_of",

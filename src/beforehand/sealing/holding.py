@@ -15,6 +15,20 @@ LONGEST_WAIT = 30.0
 _STEP = 0.02
 
 
+def require_writable(path: Path) -> None:
+    """Make sure that a file can be appended to, before anything is computed for it.
+
+    Raises
+    ------
+    WriteError
+        Its folder is not there or does not permit writing.
+    """
+    if not path.parent.is_dir():
+        raise WriteError(f"{path}: cannot be written: its folder does not exist")
+    if not os.access(path.parent, os.W_OK):
+        raise WriteError(f"{path}: cannot be written: its folder does not permit writing")
+
+
 @contextlib.contextmanager
 def held(path: Path) -> Iterator[None]:
     """Hold a file against other writers of this program while something is appended to it.
