@@ -109,6 +109,34 @@ def test_a_touched_seal_is_found_at_its_place(tmp_path, old, new, place):
     assert path.read_bytes() == before
 
 
+@pytest.mark.parametrize(
+    "by",
+    ["Ä. Ütz: “no”", "a: b # c", "- x", "'\"\\", "yes", "1.0", "null", "雪", "~", "{}", "@x", " &a *b !c"],
+)
+def test_any_name_comes_back(tmp_path, by):
+    """Whatever a YAML reader could take a name for, it is read as it was given."""
+    path = tmp_path / "kettles.seal.yaml"
+    for number in (1, 2):
+        append_seal(
+            path, plan(), file="kettles.plan.yaml", by=by, seen="nothing", sealed="2026-12-01T10:00:00Z",
+            data=None, commit=None, amendment=None,
+        )  # fmt: skip
+        assert read_seals(path)[-1].by == by, number
+
+
+def test_what_cannot_be_read_again_is_not_written(tmp_path):
+    """A name with a control sign in it leaves the chain as it is."""
+    path = tmp_path / "kettles.seal.yaml"
+    sealed(path)
+    before = path.read_bytes()
+    with pytest.raises(LockError):
+        append_seal(
+            path, plan(), file="kettles.plan.yaml", by="a\x00b", seen="nothing", sealed="now",
+            data=None, commit=None, amendment=None,
+        )  # fmt: skip
+    assert path.read_bytes() == before
+
+
 def test_a_seal_taken_out_breaks_the_chain(tmp_path):
     """Without its first or middle item the rest does not follow on; the last alone can be cut unseen."""
     records = [{"seal": 1, "previous": None}, {"seal": 2}, {"seal": 3}]

@@ -157,6 +157,8 @@ def test_sealing_twice_is_sealing_once(plan, invoke):
         (["--by", "A", "--seen", "nothing", "--kind", "gap"], "belongs to an amendment"),
         (["--by", "A", "--seen", "nothing", "--data", "none.csv"], "no such file"),
         (["--seen", "nothing"], "--by"),
+        (["--by", "A\x1b[31m", "--seen", "nothing"], "does not print"),
+        (["--by", "A\nB", "--seen", "nothing"], "does not print"),
     ],
 )
 def test_what_cannot_be_sealed(plan, invoke, words, said):

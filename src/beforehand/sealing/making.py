@@ -109,6 +109,9 @@ def _faults(
     found: list[Fault] = []
     if not by.strip():
         found.append(_fault(file, "by", "says nobody: name who seals"))
+    for place, text in (("by", by), ("amend", amend or ""), ("expected_effect", expected_effect or "")):
+        if any(not sign.isprintable() for sign in text):
+            found.append(_fault(file, place, "holds a sign that does not print: write it on one line"))
     if seen not in SEEN:
         found.append(
             _fault(file, "seen", f"{seen!r} is not one of {', '.join(SEEN)}{did_you_mean(seen, SEEN)}")

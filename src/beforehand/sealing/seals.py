@@ -162,7 +162,10 @@ def append_seal(
             "written": written_out(plan),
         }
         record["digest"] = digest_of(record)
-        write_whole(path, (HEADER + yaml_text({"seals": [*records, record]})).encode())
+        content = (HEADER + yaml_text({"seals": [*records, record]})).encode()
+        # What could not be read again must not take the place of what can.
+        _chain_of(content, str(path))
+        write_whole(path, content)
         # As it stands in the file, which is what every later reader gets.
         return read_seals(path)[-1]
 
@@ -177,6 +180,11 @@ def _records(path: Path) -> list[dict[str, Any]]:
     except OSError as error:
         reason = (error.strerror or "the system refuses").lower()
         raise refused(name, f"it cannot be read: {reason}", "seal.unreadable") from error
+    return _chain_of(raw, name)
+
+
+def _chain_of(raw: bytes, name: str) -> list[dict[str, Any]]:
+    """The chain that a file's content holds."""
     try:
         document = document_of(decoded(raw, most_bytes=LARGEST))
     except NotYamlError as broken:
