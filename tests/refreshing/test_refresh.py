@@ -128,6 +128,20 @@ def test_drift_as_scipy_and_by_hand(folder):
     assert found["minutes"].role == "outcome"
 
 
+def test_values_out_of_range_and_levels_that_came_and_went(folder):
+    """Where the plan takes them as missing their share is told; so are levels that came and went."""
+    text = PLAN.replace('"off"]', '"off", ajar]') + "missing_data: {out_of_range: missing}\n"
+    (folder / "kettles.plan.yaml").write_text(text, encoding="utf-8")
+    write_lock(run(folder / "kettles.plan.yaml").lock, folder / "kettles.lock.yaml")
+    new = kettles()
+    new.loc[:7, "scale"] = 99.0
+    new["lid"] = new["lid"].replace("off", "ajar")
+    found = {one.column: one for one in found_of(folder, new).drift}
+    assert (found["scale"].old_out_of_range, found["scale"].new_out_of_range) == (0.0, 0.1)
+    assert found["scale"].new_missing == 0.1
+    assert (found["lid"].levels_new, found["lid"].levels_gone) == (("ajar",), ("off",))
+
+
 def test_a_hand_made_total_variation(folder):
     """From 1/2 : 1/2 to 3/4 : 1/4 a quarter of the rows has moved (by definition)."""
     from beforehand.refreshing.drift import _shares

@@ -143,6 +143,10 @@ def _drifted(one: Drift) -> str:
         parts.append(f"its distribution is another (distance {one.ks:.2f}, p {p_text(one.ks_p)})")
     if one.total_variation is not None and one.total_variation >= NOTICEABLE_SHARE:
         parts.append(f"{percent(one.total_variation)} of its rows have moved to other levels")
+    if one.levels_new:
+        parts.append(f"{', '.join(map(shown, one.levels_new))} is new")
+    if abs(one.new_out_of_range - one.old_out_of_range) >= 0.01:
+        parts.append(f"{percent(one.new_out_of_range)} is out of range, was {percent(one.old_out_of_range)}")
     if one.levels_gone:
         parts.append(f"no row has {', '.join(map(shown, one.levels_gone))} any more")
     if abs(one.new_missing - one.old_missing) >= NOTICEABLE_SHARE:
