@@ -86,7 +86,8 @@ def test_what_stands_beside_the_plan_goes_along_and_nothing_else(
     """Rehearsals of any name, refreshes and reports; not another plan's, and not the key."""
     beside = plan.parent
     for name in ("racks.rehearsal.yaml", "racks.rehearsal-noise.yaml", "racks.refresh.yaml",
-                 "racks.report.html", "racks.report.docx", "racks.report.md"):  # fmt: skip
+                 "racks.report.html", "racks.report.docx", "racks.report.md",
+                 "racks.refreshed.lock.yaml"):  # fmt: skip
         (beside / name).write_bytes(b"made up\n")
     for name in ("other.rehearsal.yaml", "racks.notes.txt", "racks.labels.key"):
         (beside / name).write_bytes(b"0f" * 32)
@@ -98,7 +99,7 @@ def test_what_stands_beside_the_plan_goes_along_and_nothing_else(
     assert {name for name in racks.files_in(tmp_path / "racks.zip") if name.startswith("racks")} == {
         "racks.plan.yaml", "racks.lock.yaml", "racks.seal.yaml", "racks.looks", "racks.rehearsal.yaml",
         "racks.rehearsal-noise.yaml", "racks.refresh.yaml", "racks.report.html", "racks.report.docx",
-        "racks.report.md",
+        "racks.report.md", "racks.refreshed.lock.yaml",
     }  # fmt: skip
 
 

@@ -285,7 +285,12 @@ def test_a_share_safe_bundle_holds_the_copy_and_nothing_made_of_rows(
     racks: Any, plan: Path, tmp_path: Path
 ) -> None:
     """No lock, no report, no refresh, no rehearsal; it is received and not computed again."""
-    for name in ("racks.report.html", "racks.refresh.yaml", "racks.rehearsal.yaml"):
+    for name in (
+        "racks.report.html",
+        "racks.refresh.yaml",
+        "racks.refreshed.lock.yaml",
+        "racks.rehearsal.yaml",
+    ):
         (plan.parent / name).write_bytes(b"made of rows\n")
     done = beforehand.handover(plan, tmp_path / "racks.zip", share_safe=True)
     files = racks.files_in(tmp_path / "racks.zip")

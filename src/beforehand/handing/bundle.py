@@ -37,7 +37,7 @@ DICTIONARY = "dictionary.yaml"
 _CHAINS = (".seal.yaml", ".looks")
 
 # What a run, a refresh or a report made of the table.
-_MADE_OF_ROWS = (".refresh.yaml", ".report.html", ".report.docx", ".report.md")
+_MADE_OF_ROWS = (".refresh.yaml", ".refreshed.lock.yaml", ".report.html", ".report.docx", ".report.md")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
