@@ -91,7 +91,9 @@ def test_paired_doubles_give_what_integers_give():
     assert all(map(close, quick.column(-1), slow.column(-1)))
     assert close(quick.entry(3, 5), slow.entry(3, 5))
     line = [ONE // (place + 1) for place in range(70)]
-    assert close(quick.form(line), slow.form(line))
+    assert all(map(close, quick.times(line), slow.times(line)))
+    forms = [sum(a * b for a, b in zip(grid.times(line), line, strict=True)) // ONE for grid in (quick, slow)]
+    assert close(*forms)
     quick, slow = quick.without(4), slow.without(4)
     assert all(map(close, quick.integers().ravel().tolist(), slow.integers().ravel().tolist()))
     places = [2, 7, 69]

@@ -15,7 +15,7 @@ import numpy as np
 
 from beforehand.fit.columns import FloatArray
 from beforehand.fit.moments import Integers
-from beforehand.fit.pairs import Pair, difference, product, total
+from beforehand.fit.pairs import Pair, difference, product, quotient, total
 from beforehand.fit.sweeping import BITS, swept
 
 # Fewer columns than this are swept as integers: there is little to gain.
@@ -63,8 +63,8 @@ class Grid(Protocol):
         """Slopes, and the roots of residual times inverse over df, in the grid's scale."""
         ...
 
-    def form(self, line: Sequence[int]) -> int:
-        """``line' M line`` over the columns without the outcome."""
+    def times(self, line: Sequence[int]) -> list[int]:
+        """``M line`` over the columns without the outcome."""
         ...
 
     def integers(self) -> Integers:
@@ -112,14 +112,13 @@ class Whole:
             [math.ldexp(float(root), -BITS - _ROOT_BITS) for root in roots],
         )
 
-    def form(self, line: Sequence[int]) -> int:
-        """``line' M line`` over the columns without the outcome."""
+    def times(self, line: Sequence[int]) -> list[int]:
+        """``M line`` over the columns without the outcome."""
         k = len(line)
-        if not k:
-            return 0
-        weights = np.array(line, object)
-        rows = (self.values[:k, :k] * weights[None, :]).sum(axis=1) >> BITS
-        return int((weights * rows).sum() >> BITS)
+        return [
+            sum(int(one) * weight for one, weight in zip(row, line, strict=True)) >> BITS
+            for row in self.values[:k, :k].tolist()
+        ]
 
     def integers(self) -> Integers:
         """The whole matrix as integers."""
@@ -160,11 +159,11 @@ class Pairs:
         """The matrix after a column was swept in; the inverse stands negated."""
         column, pivot = self._line(place)
         after = _less_outer(self.values, column, pivot)
-        row = _quotient(column, pivot)
+        row = quotient(column, pivot)
         for part, line in zip(after, row, strict=True):
             part[place, :] = line
             part[:, place] = line
-        one = _quotient(Pair(np.ones(1), np.zeros(1)), pivot)
+        one = quotient(Pair(np.ones(1), np.zeros(1)), pivot)
         after.high[place, place], after.low[place, place] = -one.high[0], -one.low[0]
         return Pairs(after)
 
@@ -172,23 +171,20 @@ class Pairs:
         """Slopes, and the roots of residual times inverse over df, in the grid's scale."""
         high, low = self.values.high.diagonal(), self.values.low.diagonal()
         inner = product(Pair(-high[:-1], -low[:-1]), Pair(high[-1:], low[-1:]))
-        ratio = _quotient(inner, Pair(np.array([float(df)]), np.zeros(1)))
+        ratio = quotient(inner, Pair(np.array([float(df)]), np.zeros(1)))
         # One step of Newton's mends the last bit of the root.
         root = np.sqrt(np.maximum(ratio.high, 0.0))
         rest = difference(ratio, product(Pair(root, np.zeros_like(root)), Pair(root, np.zeros_like(root))))
         step = np.divide(rest.high, 2.0 * root, out=np.zeros_like(root), where=root > 0)
         return self.values.high[:-1, -1].tolist(), (root + step).tolist()
 
-    def form(self, line: Sequence[int]) -> int:
-        """``line' M line`` over the columns without the outcome."""
+    def times(self, line: Sequence[int]) -> list[int]:
+        """``M line`` over the columns without the outcome."""
         k = len(line)
-        if not k:
-            return 0
         weights = _pair_of(np.array(line, object))
         inner = Pair(self.values.high[:k, :k], self.values.low[:k, :k])
         rows = total(product(inner, Pair(weights.high[None, :], weights.low[None, :])))
-        found = total(product(weights, rows))
-        return _integer(float(found.high), float(found.low))
+        return _integers(rows.high, rows.low)
 
     def integers(self) -> Integers:
         """The whole matrix as integers."""
@@ -225,25 +221,11 @@ def paired(matrix: Integers, k: int) -> Pairs | None:
 
 def _less_outer(values: Pair, column: Pair, pivot: Pair) -> Pair:
     """``values - column column' / pivot``."""
-    row = _quotient(column, pivot)
+    row = quotient(column, pivot)
     outer = product(
         Pair(column.high[:, None], column.low[:, None]), Pair(row.high[None, :], row.low[None, :])
     )
     return difference(values, outer)
-
-
-def _quotient(a: Pair, b: Pair) -> Pair:
-    """``a / b`` by long division with three partial quotients."""
-    first = a.high / b.high
-    rest = difference(a, product(Pair(first, np.zeros_like(first)), b))
-    second = rest.high / b.high
-    rest = difference(rest, product(Pair(second, np.zeros_like(second)), b))
-    third = rest.high / b.high
-    high = first + second
-    low = second - (high - first)
-    low += third
-    added = high + low
-    return Pair(added, low - (added - high))
 
 
 def _pair_of(values: Integers) -> Pair:

@@ -49,6 +49,17 @@ def difference(a: Pair, b: Pair) -> Pair:
     return _tidy(high, error)
 
 
+def quotient(a: Pair, b: Pair) -> Pair:
+    """``a / b`` by long division with three partial quotients."""
+    first = a.high / b.high
+    rest = difference(a, product(Pair(first, np.zeros_like(first)), b))
+    second = rest.high / b.high
+    rest = difference(rest, product(Pair(second, np.zeros_like(second)), b))
+    high, low = _tidy(first, second)
+    low += rest.high / b.high
+    return _tidy(high, low)
+
+
 def total(a: Pair) -> Pair:
     """Sums along the last axis, halving it again and again so that there is one order only."""
     while a.high.shape[-1] > 1:

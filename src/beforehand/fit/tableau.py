@@ -243,7 +243,7 @@ class Tableau:
             place = left.index(key)
             # The inverse loses c c' / c_jj, and the form of the means with it.
             column = grid.column(place)
-            joint = sum(one * mean for one, mean in zip(column[:-1], means, strict=True)) >> BITS
+            joint = _joint(column[:-1], means)
             spread += joint * joint // column[place]
             grid = grid.without(place)
             del left[place], means[place]
@@ -298,7 +298,8 @@ def tableau_of(moments: Moments, outcome: Key, keys: Sequence[Key], *, intercept
                 raise RankDeficient(f"column {k + 1} of the model is an exact combination of the others")
             matrix = swept(matrix, k)
         grid = Whole(matrix)
-    return Tableau(moments, outcome, tuple(keys), intercept, shifts, grid, total, means, -grid.form(means))
+    spread = -_joint(grid.times(means), means)
+    return Tableau(moments, outcome, tuple(keys), intercept, shifts, grid, total, means, spread)
 
 
 def added_column_test(
@@ -334,24 +335,25 @@ def added_column_test(
         fixed(int(v), moments.units[p] + moments.units[places[-1]] - s - shift)
         for v, p, s in zip(line[:-1], places[:-1], tableau.shifts, strict=True)
     ]
-    k, whole = len(tableau.keys), tableau.matrix
     # The inverse stands negated in the tableau.
-    weighed = [
-        sum(int(a) * b for a, b in zip(row, scaled[:-1], strict=True)) >> BITS for row in whole[:k, :k]
-    ]
+    weighed = tableau.grid.times(scaled[:-1])
     own_fixed = fixed(own, 2 * (moments.units[places[-1]] - shift))
-    pivot = own_fixed + (sum(a * b for a, b in zip(weighed, scaled[:-1], strict=True)) >> BITS)
+    pivot = own_fixed + _joint(weighed, scaled[:-1])
     raw = moments.n * int(moments.products[places[-1], places[-1]])
     if df < 1 or tableau.exact or vanishes(pivot, fixed(raw, 2 * (moments.units[places[-1]] - shift))):
         return None
-    slopes = [int(v) for v in whole[:k, -1]]
-    joint = scaled[-1] - (sum(a * b for a, b in zip(slopes, scaled[:-1], strict=True)) >> BITS)
+    joint = scaled[-1] - _joint(tableau.grid.column(-1)[:-1], scaled[:-1])
     gain = Fraction(joint * joint, pivot * ONE)
     rest = Fraction(tableau.residual, ONE) - gain
     if rest <= Fraction(EXACT_FIT_TOLERANCE) ** 2 * Fraction(tableau.total, ONE):
         return None
     t = math.copysign(square_root(gain / (rest / df)), joint)
     return t, 2.0 * float(stdtr(df, -abs(t))), df
+
+
+def _joint(one: Sequence[int], other: Sequence[int]) -> int:
+    """Sum of products of two rows in fixed point."""
+    return sum(a * b for a, b in zip(one, other, strict=True)) >> BITS
 
 
 def _centred(weights: Sequence[Sequence[Fraction]], means: Sequence[Fraction]) -> list[Fraction]:
