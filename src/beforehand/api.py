@@ -241,8 +241,8 @@ def refresh(
         As of `run`; a new level, a value out of range or a text for a number is a verdict, not an error.
     """
     planned = read_plan(plan)
-    old = read_lock(lock_path(planned) if against is None else against)
     name = str(lock_path(planned) if against is None else against)
+    old = read_lock(name)
     if old.plan.decisions != decisions_digest(planned):
         what = "its plan decides otherwise than this one: compare the two plans first"
         raise refused(name, what, "refresh.plan")

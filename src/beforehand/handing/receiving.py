@@ -214,8 +214,10 @@ def _replayed(
     own = None
     if names:
         # Labels that the plan hides are hidden here too, by a key that nobody keeps.
-        hide = keyed(secrets.token_bytes(KEY_BYTES)) if plan.data.labels_in_lock == "hashed" else str
-        mine = run_plan(plan, read, progress, standing, learned_in(lock), labels=hide).lock
+        mine = new
+        if plan.data.labels_in_lock == "hashed":
+            hide = keyed(secrets.token_bytes(KEY_BYTES))
+            mine = run_plan(plan, read, progress, standing, learned_in(lock), labels=hide).lock
         own = mine.model_copy(update={"data": mine.data.model_copy(update={"columns": names})})
     # Names of columns are the table's own, as the file's place is.
     new = new.model_copy(update={"data": new.data.model_copy(update={"columns": lock.data.columns})})

@@ -8,7 +8,6 @@ from beforehand.refreshing.record import (
     as_mapping,
     refresh_text,
     refreshed,
-    same_table,
     unkept,
 )
 
@@ -18,6 +17,5 @@ __all__ = [
     "as_mapping",
     "refresh_text",
     "refreshed",
-    "same_table",
     "unkept",
 ]

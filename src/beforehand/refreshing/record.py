@@ -20,7 +20,6 @@ from beforehand.refreshing.rows import RowChanges, row_changes
 from beforehand.refreshing.verdict import Judged, broken_contract, judged
 from beforehand.running import Trail
 from beforehand.sealing.chain import digest_of
-from beforehand.table import Table
 
 HEADER = "# Written by beforehand. Do not edit: the digest on the last line covers every line above it.\n"
 
@@ -239,8 +238,3 @@ def _recorded(value: Any) -> Any:
     if isinstance(value, list | tuple):
         return [_recorded(item) for item in value]
     return value
-
-
-def same_table(old: Lock, table: Table) -> bool:
-    """Whether a table is the one of which a lock is the record."""
-    return old.data.fingerprint == table.fingerprint

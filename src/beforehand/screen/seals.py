@@ -91,13 +91,12 @@ def looks_sentence(looks: Sequence[Look]) -> str:
     """How many runs and how many different plans have met this outcome, this run among them."""
     if not looks:
         return ""
+    from beforehand.sealing import plans_that_met
+
     last = looks[-1]
     met = [look for look in looks if look.outcome == last.outcome]
-    plans: list[str] = []
-    for look in met:
-        if look.plan not in plans:
-            plans.append(look.plan)
-    number = plans.index(last.plan) + 1
+    number = list(dict.fromkeys(look.plan for look in met)).index(last.plan) + 1
     which = _ORDINALS[number - 1].capitalize() if number <= len(_ORDINALS) else f"Number {number}, a"
-    again = "" if len(met) == 1 else f"; {count(len(met), 'run')} so far by {count(len(plans), 'plan')}"
+    plans = count(plans_that_met(looks, last.outcome), "plan")
+    again = "" if len(met) == 1 else f"; {count(len(met), 'run')} so far by {plans}"
     return f"{which} plan run on this outcome{again}."
