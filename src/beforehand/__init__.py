@@ -18,6 +18,8 @@ from beforehand.version import __version__
 
 if TYPE_CHECKING:
     from beforehand.api import (
+        Engine,
+        Rehearsal,
         Replay,
         Run,
         Story,
@@ -29,13 +31,16 @@ if TYPE_CHECKING:
         plan_from_mapping,
         read_lock,
         read_plan,
+        read_rehearsal,
         receive,
         refresh,
+        rehearse,
         replay,
         run,
         seal,
         trace,
         write_lock,
+        write_rehearsal,
     )
     from beforehand.faults import (
         BeforehandError,
@@ -52,6 +57,8 @@ if TYPE_CHECKING:
 
 _HOMES = {
     "beforehand.api": (
+        "Engine",
+        "Rehearsal",
         "Replay",
         "Run",
         "Story",
@@ -63,13 +70,16 @@ _HOMES = {
         "plan_from_mapping",
         "read_lock",
         "read_plan",
+        "read_rehearsal",
         "receive",
         "refresh",
+        "rehearse",
         "replay",
         "run",
         "seal",
         "trace",
         "write_lock",
+        "write_rehearsal",
     ),
     "beforehand.faults": (
         "BeforehandError",
@@ -90,6 +100,7 @@ __all__ = [
     "Answer",
     "BeforehandError",
     "DataError",
+    "Engine",
     "Fault",
     "InputError",
     "Lock",
@@ -97,6 +108,7 @@ __all__ = [
     "NumericalError",
     "Plan",
     "PlanError",
+    "Rehearsal",
     "Replay",
     "Run",
     "Story",
@@ -110,13 +122,16 @@ __all__ = [
     "plan_from_mapping",
     "read_lock",
     "read_plan",
+    "read_rehearsal",
     "receive",
     "refresh",
+    "rehearse",
     "replay",
     "run",
     "seal",
     "trace",
     "write_lock",
+    "write_rehearsal",
 ]
 
 

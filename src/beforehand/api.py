@@ -6,8 +6,6 @@ Files, and only here and in the command line: everything below is given data and
 from __future__ import annotations
 
 import os
-from dataclasses import replace
-from datetime import UTC, datetime
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -20,20 +18,22 @@ from beforehand.lock.writing import lock_text
 from beforehand.plan import Plan, decisions_digest, plan_from_mapping, read_plan
 from beforehand.record import learned_from, learned_in
 from beforehand.refreshing import Refreshed, refreshed, unkept
+from beforehand.rehearsals import Rehearsal, is_rehearsal, rehearse, rehearse_again
+from beforehand.rehearsing.engines import Engine
+from beforehand.rehearsing.reading import read_rehearsal
+from beforehand.rehearsing.text import write_rehearsal
 from beforehand.running import Progress, run_steps
-from beforehand.runs import UNSEALED_STANDING, Run, labels_of, lock_path, plan_of, reader, run_plan
-from beforehand.sealing import (
-    Seal,
-    Standing,
-    add_look,
-    looks_path,
-    read_looks,
-    read_seals,
-    require_writable,
-    seal_path,
-    seal_plan,
-    standing_of,
+from beforehand.runs import (
+    UNSEALED_STANDING,
+    Run,
+    labels_of,
+    lock_path,
+    looked_run,
+    plan_of,
+    reader,
+    run_plan,
 )
+from beforehand.sealing import Seal, Standing, seal_plan
 from beforehand.sealing.chain import refused
 from beforehand.steps.learned import NOTHING, Learned
 from beforehand.table import read_table
@@ -99,28 +99,13 @@ def run(
     >>> run(plan, table).status
     'adopted'
     """
-    plan = plan if isinstance(plan, Plan) else read_plan(plan)
-    path = None if plan.origin is None or plan.origin.path is None else Path(plan.origin.path)
-    standing, seals = UNSEALED_STANDING, tuple[Seal, ...]()
-    if path is not None:
-        seals, looks = read_seals(seal_path(path)), read_looks(looks_path(path))
-        standing = standing_of(plan, seals, looks)
-        if register:
-            require_writable(looks_path(path))
-    done = run_plan(plan, data, progress, standing, learned)
-    if path is None or not register:
-        return done
-    looks = add_look(
-        looks_path(path),
-        date=datetime.now(UTC).strftime("%Y-%m-%dT%H:%M:%SZ"),
-        outcome=plan.outcome.column,
-        plan=done.lock.plan.decisions,
-        data=done.lock.data.fingerprint,
-        lock=done.lock.digest,
-        status=done.lock.status,
-        seal=seals[-1].digest if seals else None,
+    return looked_run(
+        plan if isinstance(plan, Plan) else read_plan(plan),
+        data,
+        progress=progress,
+        register=register,
+        learned=learned,
     )
-    return replace(done, looks=looks)
 
 
 def check(plan: Plan | str | os.PathLike[str], data: str | os.PathLike[str] | None = None) -> Review:
@@ -159,11 +144,12 @@ def replay(
     *,
     progress: Progress | None = None,
 ) -> Replay:
-    """Compute a lock again and say which number or ruling, if any, comes out differently.
+    """Compute a record again and say which number or ruling, if any, comes out differently.
 
     Parameters
     ----------
     lock : path
+        A lock, or the record of a rehearsal.
     plan : path, optional
         Without it the plan as it is written in the lock.
     data : path, optional
@@ -173,11 +159,22 @@ def replay(
     ------
     LockError, PlanError, DataError
     """
+    if is_rehearsal(lock):
+        return rehearse_again(lock, plan, data, progress=progress)
     old = read_lock(lock)
     again = read_plan(plan) if plan is not None else plan_of(old, Path(lock))
     # How the plan stood to its seals is a fact of that day, not a result.
     first = None if old.sealed_plan is None else plan_from_mapping(old.sealed_plan.written, old.plan.file)
-    new = run_plan(again, data, progress, Standing(record=old.seal, sealed=first), learned_in(old)).lock
+    read = reader(data)
+    if old.scrambled is not None:
+        from beforehand.rehearsing.scramble import marked, scrambled_table
+
+        seed = old.scrambled.seed
+        dry = run_plan(
+            again, lambda changed: scrambled_table(read(changed), changed, seed), progress, UNSEALED_STANDING
+        )
+        return replay_of(old, marked(dry.lock, seed))
+    new = run_plan(again, read, progress, Standing(record=old.seal, sealed=first), learned_in(old)).lock
     return replay_of(old, new)
 
 
@@ -243,6 +240,8 @@ def refresh(
     planned = read_plan(plan)
     name = str(lock_path(planned) if against is None else against)
     old = read_lock(name)
+    if old.scrambled is not None:
+        raise refused(name, "is of a dry run on a shuffled outcome: there is no answer in it", "scrambled")
     if old.plan.decisions != decisions_digest(planned):
         what = "its plan decides otherwise than this one: compare the two plans first"
         raise refused(name, what, "refresh.plan")
@@ -310,8 +309,10 @@ def seal(
 
 
 __all__ = [
+    "Engine",
     "Lock",
     "Plan",
+    "Rehearsal",
     "Replay",
     "Run",
     "Story",
@@ -324,11 +325,14 @@ __all__ = [
     "plan_from_mapping",
     "read_lock",
     "read_plan",
+    "read_rehearsal",
     "receive",
     "refresh",
+    "rehearse",
     "replay",
     "run",
     "seal",
     "trace",
     "write_lock",
+    "write_rehearsal",
 ]

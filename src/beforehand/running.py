@@ -10,7 +10,7 @@ import numpy as np
 from beforehand.faults import DataError, Fault
 from beforehand.fit.columns import FloatArray
 from beforehand.plan import Plan
-from beforehand.steps.bench import Fitted
+from beforehand.steps.bench import Bench, Fitted
 from beforehand.steps.collinearity import collinearity
 from beforehand.steps.dependence import remove_dependent
 from beforehand.steps.final_checks import final_checks
@@ -25,7 +25,7 @@ from beforehand.steps.state import Model, State
 from beforehand.steps.transforms import transforms
 from beforehand.table import Table, ranks_of
 
-Step = Callable[[State, Plan, RecordingBench], tuple[State, tuple[Ruling, ...]]]
+Step = Callable[[State, Plan, Bench], tuple[State, tuple[Ruling, ...]]]
 Progress = Callable[[str], None]
 
 # A new step is one module and one line here (and its name in the plan's language).
@@ -94,23 +94,16 @@ def run_steps(
     bench = RecordingBench(
         plan,
         source,
-        order=_in_base(table, _order_column(plan), base),
-        groups=_in_base(table, getattr(plan.errors, "cluster_by", None), base),
+        order=ranks_in_base(table, order_column(plan), base),
+        groups=ranks_in_base(table, getattr(plan.errors, "cluster_by", None), base),
         progress=progress,
         learned=learned,
     )
     state = replace(state, errors=bench.errors)
     if not state.status:
-        _require_enough(plan, table, state, bench, source)
-    for name in plan.steps or ("full_model",):
-        if state.status or name == "missing_data":
-            continue
-        bench.step = name
-        state, made = remove_dependent(state, plan, bench, name)
-        rulings.extend(made)
-        if not state.status and name in STEPS:
-            state, made = STEPS[name](state, plan, bench)
-            rulings.extend(made)
+        require_enough(plan, table.file, bench.design(state), source.raw(plan.outcome.column))
+    state, made = follow(state, plan, bench)
+    rulings.extend(made)
     bench.step = "answer"
     status = state.status or ("adopted" if state.working else "mean_only")
     return Trail(
@@ -127,35 +120,60 @@ def run_steps(
     )
 
 
-def _order_column(plan: Plan) -> str | None:
+def follow(state: State, plan: Plan, bench: Bench) -> tuple[State, tuple[Ruling, ...]]:
+    """Every step of a plan after missing data, in its order; the rules of a run and of a rehearsal.
+
+    Parameters
+    ----------
+    state : State
+        As the missing-data step left it.
+    plan : Plan
+    bench : Bench
+        What supplies the numbers.
+
+    Returns
+    -------
+    tuple of State and rulings
+        The state in which the plan ended.
+    """
+    rulings: list[Ruling] = []
+    for name in plan.steps or ("full_model",):
+        if state.status or name == "missing_data":
+            continue
+        bench.step = name
+        state, made = remove_dependent(state, plan, bench, name)
+        rulings.extend(made)
+        if not state.status and name in STEPS:
+            state, made = STEPS[name](state, plan, bench)
+            rulings.extend(made)
+    return state, tuple(rulings)
+
+
+def order_column(plan: Plan) -> str | None:
     """The column in whose order independence is checked, or errors are correlated."""
     block = plan.assumptions.independence
     return None if block == "skip" else block.in_order_of
 
 
-def _in_base(table: Table, column: str | None, base: Base) -> FloatArray | None:
+def ranks_in_base(table: Table, column: str | None, base: Base) -> FloatArray | None:
     """Ranks of a column over the rows of the base."""
     if column is None:
         return None
     return np.asarray(ranks_of(table, column)[base.kept], dtype=np.float64)
 
 
-def _require_enough(
-    plan: Plan, table: Table, state: State, bench: RecordingBench, source: TableSource
-) -> None:
+def require_enough(plan: Plan, file: str, model: Model, outcome: FloatArray) -> None:
     """More rows than coefficients, and an outcome that varies, or a fault."""
-    model = bench.design(state)
     if model.rows.n <= model.p:
         what = (
             f"{model.rows.n} complete rows are left and the full model has {model.p} coefficients: "
             f"it needs at least {model.p + 1} rows"
         )
-        raise DataError([Fault(file=table.file, line=None, place="", what=what, code="too_few_rows")])
-    outcome = source.raw(plan.outcome.column)
+        raise DataError([Fault(file=file, line=None, place="", what=what, code="too_few_rows")])
     if outcome.min() == outcome.max():
         what = f"the outcome {plan.outcome.column} has one value only in the rows in use"
         raise DataError(
-            [Fault(file=table.file, line=None, place=plan.outcome.column, what=what, code="constant_outcome")]
+            [Fault(file=file, line=None, place=plan.outcome.column, what=what, code="constant_outcome")]
         )
 
 
@@ -166,11 +184,18 @@ def mean_model(model: Model) -> Model:
 
 def _final(state: State, status: str, bench: RecordingBench) -> Fitted | None:
     """The fit that the answer rests on."""
-    if status == "stopped" and not bench.record.fits:
-        return None
+    if status == "stopped":
+        if not bench.record.fits:
+            return None
+        model = bench.design(state)
+        if not model.terms or bench.dependence(model) is not None:
+            return None
+    return final_fit(state, bench)
+
+
+def final_fit(state: State, bench: Bench) -> Fitted:
+    """The fit of the model in which the steps ended, with the standard errors in force."""
     model = bench.design(state)
-    if status == "stopped" and (not model.terms or bench.dependence(model) is not None):
-        return None
     if not model.terms:
         return bench.fit(mean_model(model), "mean model")
     fitted = bench.fit(model, "final model")

@@ -7,7 +7,8 @@ import hmac
 import os
 import secrets
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from datetime import UTC, datetime
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -19,7 +20,18 @@ from beforehand.names import beside
 from beforehand.plan import Plan, PlanOrigin, plan_from_mapping, with_changes
 from beforehand.record import UNSEALED, lock_of
 from beforehand.running import Progress, Trail, run_steps
-from beforehand.sealing import Look, Standing
+from beforehand.sealing import (
+    Look,
+    Seal,
+    Standing,
+    add_look,
+    looks_path,
+    read_looks,
+    read_seals,
+    require_writable,
+    seal_path,
+    standing_of,
+)
 from beforehand.steps.learned import NOTHING, Learned
 from beforehand.table import Table, read_table, table_from_frame
 
@@ -91,6 +103,44 @@ def run_plan(
     return Run(lock=sealed_lock(lock), trail=trail)
 
 
+def looked_run(
+    plan: Plan,
+    data: str | os.PathLike[str] | pd.DataFrame | Callable[[Plan], Table] | None,
+    *,
+    progress: Progress | None = None,
+    register: bool = True,
+    learned: Learned = NOTHING,
+) -> Run:
+    """A run that stands in the register of looks beside its plan, where the plan is a file.
+
+    Raises
+    ------
+    PlanError, DataError, LockError, WriteError
+        As of the public ``run``.
+    """
+    path = None if plan.origin is None or plan.origin.path is None else Path(plan.origin.path)
+    standing, seals = UNSEALED_STANDING, tuple[Seal, ...]()
+    if path is not None:
+        seals, looks = read_seals(seal_path(path)), read_looks(looks_path(path))
+        standing = standing_of(plan, seals, looks)
+        if register:
+            require_writable(looks_path(path))
+    done = run_plan(plan, data, progress, standing, learned)
+    if path is None or not register:
+        return done
+    looks = add_look(
+        looks_path(path),
+        date=datetime.now(UTC).strftime("%Y-%m-%dT%H:%M:%SZ"),
+        outcome=plan.outcome.column,
+        plan=done.lock.plan.decisions,
+        data=done.lock.data.fingerprint,
+        lock=done.lock.digest,
+        status=done.lock.status,
+        seal=seals[-1].digest if seals else None,
+    )
+    return replace(done, looks=looks)
+
+
 def lock_path(plan: Plan) -> Path:
     """Where a plan's lock stands: beside it, under its name.
 
@@ -129,7 +179,8 @@ def same_contract(plan: Plan, changed: Plan) -> bool:
         "errors",
         "assumptions",
     )
-    return all(getattr(plan, part) == getattr(changed, part) for part in parts)
+    same = all(getattr(plan, part) == getattr(changed, part) for part in parts)
+    return same and plan.rehearsal.leave_out == changed.rehearsal.leave_out
 
 
 def plan_of(lock: Lock, path: Path) -> Plan:

@@ -62,7 +62,7 @@ def test_the_help_of_the_program_is_this_text(command: Command) -> None:
         "  refresh   Run a plan on refreshed data and say whether the answer holds.\n"
         "  handover  Pack a plan and its record, to be checked by someone else.\n"
         "  receive   Check a bundle, unpack it, and compute its lockfile again.\n"
-        "  schema    Print the JSON Schema of plans or of lockfiles.\n"
+        "  schema    Print the JSON Schema of plans, of lockfiles or of rehearsals.\n"
         "  guide     Explain the plan block by block, the rules, the record.\n"
         "\n"
         "  Exit codes: 0 done, 2 unusable input, 3 it comes out differently.\n"
@@ -109,7 +109,7 @@ def test_the_version_is_told(command: Command) -> None:
         (["run"], "Missing argument 'PLAN'"),
         (["run", "--alpha", "0.01", "a.plan.yaml"], "No such option: --alpha"),
         (["draft", "a.csv"], "Missing option '--outcome'"),
-        (["schema", "table"], "is not one of 'plan', 'lock'"),
+        (["schema", "table"], "is not one of 'plan', 'lock', 'rehearsal'"),
     ],
 )
 def test_a_usage_error_goes_to_standard_error_and_ends_with_2(

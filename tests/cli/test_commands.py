@@ -274,7 +274,7 @@ def test_schema_writes_a_file_and_replaces_only_a_schema(invoke: Invoke, tmp_pat
     assert path.read_text(encoding="utf-8") == "mine"
 
 
-@pytest.mark.parametrize("what", ["plan", "lock"])
+@pytest.mark.parametrize("what", ["plan", "lock", "rehearsal"])
 def test_a_schema_is_json_of_its_kind(what: str, invoke: Invoke) -> None:
     """With the draft of JSON Schema that it is written in."""
     assert json.loads(invoke("schema", what).stdout)["$schema"].endswith("2020-12/schema")

@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 from scipy import stats
 
-from beforehand.fit.exponents import HIGHEST, LOWEST, outcome_exponent, predictor_exponent
+from beforehand.fit.exponents import HIGHEST, LOWEST, NoExponent, outcome_exponent, predictor_exponent
 
 
 def profile(y, x):
@@ -80,7 +80,7 @@ def test_nothing_to_choose_keeps_one():
 
 def test_what_cannot_be_learned():
     """An exact fit and a model without any fit are refused with a reason."""
-    with pytest.raises(ValueError, match="exactly"):
+    with pytest.raises(NoExponent, match="exactly"):
         outcome_exponent(lambda exponent: 0.0, n=10, log_total=1.0)
-    with pytest.raises(ValueError, match="any exponent"):
+    with pytest.raises(NoExponent, match="any exponent"):
         outcome_exponent(lambda exponent: math.inf, n=10, log_total=1.0)

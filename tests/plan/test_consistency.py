@@ -422,7 +422,84 @@ CASES: dict[str, tuple[dict[str, Any], list[str]]] = {
     ),
     "slope of a category": (
         {"expects": {"residual_sd": 1, "slopes": {"breed": 1}}},
-        ["expects.slopes.breed: gives a slope to 'breed', which is a category"],
+        [
+            "expects.slopes.breed: gives a slope to 'breed', which is a category; "
+            "give its levels their differences from 'dark', {level: number}"
+        ],
+    ),
+    "slopes of levels": ({"expects": {"residual_sd": 1, "slopes": {"breed": {"yellow": -2.5}}}}, []),
+    "slopes of other levels": (
+        {"expects": {"residual_sd": 1, "slopes": {"breed": {"dark": 1, "yelow": 2}, "bloom": {"dark": 1}}}},
+        [
+            "expects.slopes.bloom: gives levels to 'bloom', which is a number",
+            "expects.slopes.breed.dark: is 1, but 'dark' is the baseline that the others differ from",
+            "expects.slopes.breed.yelow: names 'yelow', which is not among the levels of 'breed' "
+            "(nearest: 'yellow')",
+        ],
+    ),
+    "slope that is neither": (
+        {"expects": {"residual_sd": 1, "slopes": {"breed": {"yellow": "much"}, "bloom": [1], "rain": {}}}},
+        [
+            "expects.slopes.breed: gives 'yellow' 'much'; it must be a number",
+            "expects.slopes.bloom: is a list; "
+            "it must be a number, or of a category numbers by level, {level: number}",
+            "expects.slopes.rain: names no level; give each level its difference from the baseline",
+        ],
+    ),
+    "correlations of what is not a number": (
+        {
+            "expects": {
+                "residual_sd": 1,
+                "correlations": [
+                    {"between": ["bloom", "rian"], "r": 0.5},
+                    {"between": ["rain", "breed"], "r": 0.5},
+                    {"between": ["rain", "rain"], "r": 0.5},
+                ],
+            }
+        },
+        [
+            "expects.correlations[0].between[1]: names 'rian', which is not among the predictors "
+            "(nearest: 'rain')",
+            "expects.correlations[1].between[1]: names 'breed', a category; correlations are of numbers",
+            "expects.correlations[2].between: names 'rain' twice; a correlation is of two",
+        ],
+    ),
+    "correlation named twice": (
+        {
+            "expects": {
+                "residual_sd": 1,
+                "correlations": [
+                    {"between": ["bloom", "rain"], "r": 0.5},
+                    {"between": ["rain", "bloom"], "r": 0.4},
+                ],
+            }
+        },
+        ["expects.correlations[1]: names the pair of expects.correlations[0] again"],
+    ),
+    "correlation of 1": (
+        {"expects": {"residual_sd": 1, "correlations": [{"between": ["bloom", "rain"], "r": 1}]}},
+        ["expects.correlations[0].r: is 1; it must lie between -1 and 1, both excluded"],
+    ),
+    "correlations that cannot hold together": (
+        {
+            "predictors": [X, {"column": "z"}, {"column": "w"}],
+            "expects": {
+                "residual_sd": 1,
+                "correlations": [{"between": ["x", "z"], "r": 0.8}, {"between": ["z", "w"], "r": 0.8}],
+            },
+        },
+        [
+            "expects.correlations: cannot all hold at once: "
+            "with 0 for the other pairs, the matrix is not positive definite"
+        ],
+    ),
+    "groups of the outcome": (
+        {"rehearsal": {"leave_out": "honey"}},
+        ["rehearsal.leave_out: is the outcome 'honey'; another column names the groups"],
+    ),
+    "one fold": (
+        {"rehearsal": {"folds": 1}},
+        ["rehearsal.folds: is 1; it must lie between 2 and 1000"],
     ),
     "expected shares": (
         {

@@ -15,6 +15,7 @@ from beforehand.cli.guide import guide
 from beforehand.cli.handover import handover
 from beforehand.cli.receive import receive
 from beforehand.cli.refresh import refresh
+from beforehand.cli.rehearse import rehearse
 from beforehand.cli.replay import replay
 from beforehand.cli.run import run
 from beforehand.cli.schema import schema
@@ -33,7 +34,11 @@ app = typer.Typer(
     epilog="Exit codes: 0 done, 2 unusable input, 3 it comes out differently.",
 )
 
-for command in (draft, check, seal, run, replay, trace, compare, refresh, handover, receive, schema, guide):
+COMMANDS = (
+    draft, check, rehearse, seal, run, replay, trace, compare, refresh, handover, receive, schema, guide,
+)  # fmt: skip
+
+for command in COMMANDS:
     app.command(cls=Plain)(command)
 
 

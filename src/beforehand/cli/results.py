@@ -27,7 +27,9 @@ def check_result(reviewed: Review, plan: Plan | None) -> dict[str, Any]:
     return result if plan is None else result | {"plan": written_out(plan)}
 
 
-def run_result(lock: Lock, record: str, looks: Sequence[Look] = ()) -> dict[str, Any]:
+def run_result(
+    lock: Lock, record: str, looks: Sequence[Look] = (), rehearsed: Sequence[str] = ()
+) -> dict[str, Any]:
     """The answer of a run and what left; everything else is in the record."""
     return {
         "status": lock.status,
@@ -36,6 +38,7 @@ def run_result(lock: Lock, record: str, looks: Sequence[Look] = ()) -> dict[str,
         "plan": {"file": lock.plan.file, "decisions": lock.plan.decisions, "whole": lock.plan.whole},
         "seal": lock.seal,
         "looks": len(looks),
+        "rehearsed": rehearsed,
         "data": lock.data,
         "answer": lock.answer,
         "sealed_answer": lock.sealed_answer,

@@ -53,14 +53,22 @@ def run(
         api.write_lock(lock, record)
     if quiet:
         return
+    from beforehand.rehearsing.reading import rehearsal_beside
+
+    rehearsal = rehearsal_beside(lock, plan)
     if as_json:
         from beforehand.cli.machine import json_text
         from beforehand.cli.results import run_result
+        from beforehand.screen.quoted import quoted
 
-        terminal.document(json_text(run_result(lock, str(record), done.looks)))
+        rehearsed = () if rehearsal is None else quoted(rehearsal)
+        terminal.document(json_text(run_result(lock, str(record), done.looks, rehearsed)))
         return
     from beforehand.screen.answer import answer_text
 
     terminal.say(
-        answer_text(lock, str(record), looks=done.looks, width=terminal.width(), colour=terminal.colour())
-    )
+        answer_text(
+            lock, str(record), looks=done.looks, rehearsal=rehearsal, width=terminal.width(),
+            colour=terminal.colour(),
+        )
+    )  # fmt: skip

@@ -17,12 +17,13 @@ class Described(StrEnum):
 
     plan = "plan"
     lock = "lock"
+    rehearsal = "rehearsal"
 
 
 def schema(
     what: Annotated[
         Described,
-        typer.Argument(metavar="plan|lock", help="Which of the two file kinds.", show_default=False),
+        typer.Argument(metavar="plan|lock|rehearsal", help="Which kind of file.", show_default=False),
     ],
     output: Annotated[
         Path | None,
@@ -35,7 +36,7 @@ def schema(
         ),
     ] = None,
 ) -> None:
-    """Print the JSON Schema of plans or of lockfiles.
+    """Print the JSON Schema of plans, of lockfiles or of rehearsals.
 
     An editor that knows it completes the keys of a plan and checks them as they are typed.
     """
@@ -43,8 +44,10 @@ def schema(
 
     if what is Described.plan:
         from beforehand.plan import plan_schema as described
-    else:
+    elif what is Described.lock:
         from beforehand.lock import lock_schema as described
+    else:
+        from beforehand.rehearsing.text import rehearsal_schema as described
     text = json_text(described())
     if output is None:
         terminal.document(text)

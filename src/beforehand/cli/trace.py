@@ -29,12 +29,19 @@ def trace(
     """
     from beforehand import api
 
-    story = api.trace(api.read_lock(lock), subject)
+    read = api.read_lock(lock)
+    story = api.trace(read, subject)
     if as_json:
         from beforehand.cli.machine import json_text
 
         terminal.document(json_text(story))
         return
+    from beforehand.rehearsing.reading import rehearsal_beside
+    from beforehand.screen.quoted import quoted_of
     from beforehand.screen.story import story_text
 
-    terminal.say(story_text(story, width=terminal.width(), colour=terminal.colour()))
+    beside = [] if read.scrambled is None else [read.scrambled.says]
+    rehearsal = rehearsal_beside(read, lock.with_name(read.plan.file))
+    if rehearsal is not None and story.kind != "row":
+        beside += quoted_of(rehearsal, story.subject)
+    terminal.say(story_text(story, beside=beside, width=terminal.width(), colour=terminal.colour()))

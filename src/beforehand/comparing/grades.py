@@ -15,6 +15,14 @@ _TEXT = Always(grade="wording", why="no number and no ruling depends on it")
 _READING = Always(grade="different", why="the file may be read as another table")
 _POPULATION = Always(grade="different", why="another population is meant, not another standard")
 _EXPECTED = Always(grade="different", why="rehearsal supposes another world; the run is not touched")
+_EXPECTED_OF = Items(
+    came="different",
+    went="different",
+    why_came=_EXPECTED.why,
+    why_went=_EXPECTED.why,
+    order=None,
+    why_changed=_EXPECTED.why,
+)
 _VALUES = Ends(looser="more values are accepted", stricter="fewer values are accepted")
 _CHECK = Words(
     order=(ANY_OTHER, "skip"), looser="the check is no longer made", stricter="the check is now made"
@@ -316,31 +324,21 @@ GRADES: Mapping[str, Rule] = {
     # ---- beside the run ----
     "expects": _EXPECTED,
     "expects.residual_sd": _EXPECTED,
-    "expects.slopes": Items(
-        came="different",
-        went="different",
-        why_came="rehearsal supposes another world; the run is not touched",
-        why_went="rehearsal supposes another world; the run is not touched",
-        order=None,
-        why_changed="rehearsal supposes another world; the run is not touched",
-    ),
-    "expects.predictors": Items(
-        came="different",
-        went="different",
-        why_came="rehearsal supposes another world; the run is not touched",
-        why_went="rehearsal supposes another world; the run is not touched",
-        order=None,
-    ),
+    "expects.slopes": _EXPECTED_OF,
+    "expects.predictors": _EXPECTED_OF,
     "expects.predictors.mean": _EXPECTED,
     "expects.predictors.sd": _EXPECTED,
-    "expects.predictors.shares": Items(
+    "expects.predictors.shares": _EXPECTED_OF,
+    "expects.correlations": Items(
         came="different",
         went="different",
-        why_came="rehearsal supposes another world; the run is not touched",
-        why_went="rehearsal supposes another world; the run is not touched",
-        order=None,
-        why_changed="rehearsal supposes another world; the run is not touched",
+        why_came=_EXPECTED.why,
+        why_went=_EXPECTED.why,
+        order="wording",
+        why_order="their order means nothing",
     ),
+    "expects.correlations.between": _EXPECTED,
+    "expects.correlations.r": _EXPECTED,
     "rehearsal": _INSIDE,
     "rehearsal.replicates": Number(
         up="stricter",
@@ -356,6 +354,8 @@ GRADES: Mapping[str, Rule] = {
         order="wording",
         why_order="their order means nothing",
     ),
+    "rehearsal.folds": Always(grade="different", why="rehearsal leaves out other parts of the rows"),
+    "rehearsal.leave_out": Always(grade="different", why="rehearsal leaves out other parts of the rows"),
     # Each alternative is one more way in which the answer can be shown not to hold.
     "alternatives": Items(
         came="stricter",

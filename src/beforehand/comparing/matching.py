@@ -6,7 +6,7 @@ from collections import Counter
 from collections.abc import Hashable, Iterable, Mapping
 from typing import Any
 
-from beforehand.plan import Derived, Eligibility, KeepGroup, KeepPredictor, Predictor
+from beforehand.plan import Derived, Eligibility, ExpectedCorrelation, KeepGroup, KeepPredictor, Predictor
 
 
 def matched(path: str, old: tuple[Any, ...], new: tuple[Any, ...]) -> list[int | None]:
@@ -77,6 +77,8 @@ def _name(item: Any) -> tuple[Hashable, ...]:
             return (names if isinstance(names, str) else frozenset(names),)
         case Derived() | Predictor():
             return (item.column,)
+        case ExpectedCorrelation():
+            return (frozenset(item.between),)
     return (frozenset(item) if isinstance(item, tuple) else item,)
 
 
@@ -99,6 +101,8 @@ def _label(item: Any) -> str:
             return ", ".join(item.at_least_one_of)
         case KeepPredictor():
             return item.predictor if isinstance(item.predictor, str) else ", ".join(item.predictor)
+        case ExpectedCorrelation():
+            return ", ".join(item.between)
         case tuple():
             return ", ".join(map(str, item))
     return str(item)

@@ -10,6 +10,8 @@ import math
 from collections.abc import Callable
 from dataclasses import dataclass
 
+from beforehand.faults import NumericalError
+
 # Exponents beyond these are no longer ladders of powers but a wish for another model.
 LOWEST, HIGHEST = -2.0, 2.0
 
@@ -26,6 +28,13 @@ _FIRST_STEP = 0.25  # first stride from the maximum to the end of the interval
 
 _COARSE_STEP = 50  # hundredths
 _GOLDEN = (math.sqrt(5.0) - 1.0) / 2.0
+
+
+class NoExponent(NumericalError):  # noqa: N818 - named by what is so, as its neighbours are
+    """No exponent can be learned from these rows."""
+
+    code = "no_exponent"
+
 
 RssOf = Callable[[float], float]
 
@@ -116,7 +125,7 @@ def outcome_exponent(rss_of: RssOf, *, n: int, log_total: float) -> OutcomeExpon
 
     Raises
     ------
-    ValueError
+    NoExponent
         When the model cannot be fitted under any exponent, or fits one exactly.
     """
     seen: dict[float, float] = {}
@@ -125,7 +134,7 @@ def outcome_exponent(rss_of: RssOf, *, n: int, log_total: float) -> OutcomeExpon
         if exponent not in seen:
             rss = rss_of(exponent)
             if not rss > 0.0:
-                raise ValueError(f"the outcome is fitted exactly under the exponent {exponent:g}")
+                raise NoExponent(f"the outcome is fitted exactly under the exponent {exponent:g}")
             # Infinite where no fit exists: such an exponent is never the best.
             seen[exponent] = -0.5 * n * math.log(rss / n) + (exponent - 1.0) * log_total
         return seen[exponent]
@@ -133,7 +142,7 @@ def outcome_exponent(rss_of: RssOf, *, n: int, log_total: float) -> OutcomeExpon
     grid = [LOWEST + 0.5 * step for step in range(round(2 * (HIGHEST - LOWEST)) + 1)]
     start = max(grid, key=lambda exponent: (likelihood(exponent), -abs(exponent - 1.0)))
     if math.isinf(likelihood(start)):
-        raise ValueError("the outcome cannot be fitted under any exponent")
+        raise NoExponent("the outcome cannot be fitted under any exponent")
     estimate = _maximum(likelihood, max(start - 0.5, LOWEST), min(start + 0.5, HIGHEST))
     largest = likelihood(estimate)
     floor = largest - LIKELIHOOD_DROP

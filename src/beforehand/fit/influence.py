@@ -21,6 +21,11 @@ from beforehand.fit.tableau import Tableau
 CHANGE_BITS = 56
 
 
+# A row that alone is all but this share of the outcome's variation leaves nothing to explain: without
+# it R² is taken as it was.
+NOTHING_LEFT = 1e-9
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Influence:
     """Influence measures of every row; each array has shape (n,).
@@ -92,10 +97,48 @@ def influence(source: Source, tableau: Tableau, values: RowValues, *, dfbetas: b
     Influence
         With one residual degree of freedom the measures that leave the row out are NaN.
     """
-    p, df = tableau.p, tableau.df
-    h, e = values.leverage, values.residual
+    found = measures_of(values.leverage, values.residual, rss=float(tableau.rss), p=tableau.p, df=tableau.df)
+    return found.influence(_largest_dfbetas(source, tableau, values, found.without) if dfbetas else None)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class ClosedForm:
+    """Measures that follow from a row's leverage and residual.
+
+    ``without`` is the residual mean square of the fit without the row.
+    """
+
+    leverage: FloatArray
+    internal: FloatArray
+    external: FloatArray
+    cooks_distance: FloatArray
+    dffits: FloatArray
+    covariance_ratio: FloatArray
+    sole: NDArray[np.bool_]
+    without: FloatArray
+
+    def influence(self, largest_dfbetas: FloatArray | None) -> Influence:
+        """All measures."""
+        return Influence(
+            leverage=self.leverage, internal=self.internal, external=self.external,
+            cooks_distance=self.cooks_distance, dffits=self.dffits, largest_dfbetas=largest_dfbetas,
+            covariance_ratio=self.covariance_ratio, sole=self.sole,
+        )  # fmt: skip
+
+
+def measures_of(h: FloatArray, e: FloatArray, *, rss: float, p: int, df: int) -> ClosedForm:
+    """Measures of rows of leverage ``h`` and residual ``e``, each of shape (n,).
+
+    Parameters
+    ----------
+    h, e : FloatArray, shape (n,)
+    rss : float
+        Residual sum of squares of the fit.
+    p, df : int
+        Coefficients, and residual degrees of freedom.
+    """
     sole = h >= 1.0
-    s2 = float(tableau.rss) / df
+    s2 = rss / df
     with np.errstate(divide="ignore", invalid="ignore"):
         rest = np.where(sole, np.nan, 1.0 - h)
         internal = e / np.sqrt(s2 * rest)
@@ -105,10 +148,9 @@ def influence(source: Source, tableau: Tableau, values: RowValues, *, dfbetas: b
         cooks = internal * internal * h / (p * rest)
         dffits = external * np.sqrt(h / rest)
         ratio = (without / s2) ** p / rest
-    largest = _largest_dfbetas(source, tableau, values, without) if dfbetas else None
-    return Influence(
+    return ClosedForm(
         leverage=h, internal=internal, external=external, cooks_distance=cooks, dffits=dffits,
-        largest_dfbetas=largest, covariance_ratio=ratio, sole=sole,
+        covariance_ratio=ratio, sole=sole, without=without,
     )  # fmt: skip
 
 
@@ -195,7 +237,7 @@ def _change_of_r_squared(
         tss_without = tss - outcome * outcome
     lost = residual * residual / rest
     with np.errstate(divide="ignore", invalid="ignore"):
-        return np.where(tss_without > 0.0, rss / tss - (rss - lost) / tss_without, 0.0)
+        return np.where(tss_without > NOTHING_LEFT * tss, rss / tss - (rss - lost) / tss_without, 0.0)
 
 
 def _p_without(

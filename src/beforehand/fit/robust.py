@@ -99,7 +99,7 @@ def robust_fit(
         weight, factor = _weights(errors, fit, values)
         covariance = _gram(pulls * (residual * weight)[:, None])
     roots = _roots(tableau)
-    return _with_covariance(fit, tableau, blocks, covariance * factor * np.outer(roots, roots), df, errors)
+    return fit_with(fit, covariance * factor * np.outer(roots, roots), blocks, df, errors)
 
 
 def _weights(errors: str, fit: Fit, values: RowValues) -> tuple[FloatArray, float]:
@@ -152,15 +152,22 @@ def _with_lags(scores: FloatArray, lags: int) -> FloatArray:
     return total
 
 
-def _with_covariance(
-    fit: Fit,
-    tableau: Tableau,
-    blocks: Mapping[str, tuple[Key, ...]],
-    covariance: FloatArray,
-    df: int,
-    errors: str,
+def fit_with(
+    fit: Fit, covariance: FloatArray, blocks: Mapping[str, tuple[Key, ...]], df: int, errors: str
 ) -> Fit:
-    """The fit with this covariance and all that follows from it."""
+    """A fit with another covariance of its coefficients and all that follows from it.
+
+    Parameters
+    ----------
+    fit : Fit
+    covariance : FloatArray, shape (p, p)
+        In the order of the fit's coefficients.
+    blocks : mapping of predictor to its columns
+    df : int
+        Degrees of freedom of the tests.
+    errors : str
+        What the covariance is called.
+    """
     coefficients = tuple(_coefficient(c, float(covariance[j, j]), df) for j, c in enumerate(fit.coefficients))
     estimates = np.array([c.estimate for c in fit.coefficients])
     place = {c.key: j for j, c in enumerate(fit.coefficients)}

@@ -16,16 +16,24 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.special import fdtrc
 
+from beforehand.faults import NumericalError
+
 # Beyond this many predictors the tree of a table of noise can take hours.
 MOST_PREDICTORS = 20
 
 # Subsets whose adjusted R² is nearer than this are told apart by exact fits only.
 WITHIN = 1e-9
 
-# A pivot smaller than this share of a unit diagonal is left to the exact arithmetic.
+# A pivot smaller than this share of a unit diagonal has no digit left to search by.
 SMALLEST_PIVOT = 1e-14
 
 Matrix = NDArray[np.float64]
+
+
+class NearlyDependent(NumericalError):  # noqa: N818 - named by what is so, as its neighbours are
+    """Columns keep too little of their own for subsets to be told apart."""
+
+    code = "nearly_dependent"
 
 
 @dataclass(frozen=True, slots=True)
@@ -99,7 +107,10 @@ def _swept(matrix: Matrix, columns: Sequence[int]) -> Matrix:
     for k in columns:
         pivot = swept[k, k]
         if abs(pivot) < SMALLEST_PIVOT:
-            continue
+            raise NearlyDependent(
+                "best_subset cannot be searched, as columns of the model nearly depend on each other: let "
+                "the collinearity step come first, or leave one of them out"
+            )
         row = swept[k] / pivot
         column = swept[:, k].copy()
         swept -= np.outer(column, row)

@@ -22,6 +22,8 @@ from beforehand.lock.files import write_whole
 from beforehand.lock.schema import lock_schema_text
 from beforehand.plan import Plan, plan_from_mapping, read_plan, whole_digest
 from beforehand.plan.schema import schema_text
+from beforehand.rehearsing.reading import RECORD_SUFFIX
+from beforehand.rehearsing.text import rehearsal_schema_text
 from beforehand.runs import hashed_labels
 from beforehand.sealing import beside
 from beforehand.table import Table, read_table
@@ -114,6 +116,8 @@ def hand_over(
         DICTIONARY: dictionary_text(plan, table, fewest=fewest).encode(),
         READ_ME: read_me(plan.title, path.name, lock, rows, share_safe=share_safe).encode(),
     }
+    if any(name.endswith(RECORD_SUFFIX) for name in files):
+        generated["rehearsal.schema.json"] = rehearsal_schema_text().encode()
     _require_good(path, [*files, *generated, MANIFEST], files | generated)
     files |= generated
     members = {name: member_of(files[name]) for name in sorted(files)}

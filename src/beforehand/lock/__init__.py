@@ -33,6 +33,7 @@ from beforehand.lock.models import (
     LearnedRecord,
     Lock,
     PlanRecord,
+    Scrambled,
     SealRecord,
     Status,
 )
@@ -93,6 +94,7 @@ __all__ = [
     "Replay",
     "RowRemoved",
     "RulingRecord",
+    "Scrambled",
     "SealRecord",
     "SignContradiction",
     "Standing",

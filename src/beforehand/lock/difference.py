@@ -21,7 +21,6 @@ from beforehand.lock.checks import (
     InfluenceRow,
     MissingRecord,
 )
-from beforehand.lock.models import Lock
 from beforehand.lock.record import Record, Scalar
 from beforehand.lock.trail import FitRecord, FitTerm, FitTest, LedgerStage, RowRemoved, RulingRecord
 from beforehand.lock.writing import covered_text, one_line
@@ -99,13 +98,13 @@ class Replay:
     differences: tuple[Difference, ...]
 
 
-def replay_of(old: Lock, new: Lock, *, relative: float = RELATIVE) -> Replay:
+def replay_of(old: Record, new: Record, *, relative: float = RELATIVE) -> Replay:
     """Compare a lock with the same run computed again: bytes first, then values.
 
     Parameters
     ----------
-    old, new : Lock
-        The lock on file, and the one computed now.
+    old, new : Lock, or another whole record
+        The one on file, and the one computed now.
     relative : float
         Numbers as near as this, relative to the larger, are the same.
     """
@@ -114,13 +113,13 @@ def replay_of(old: Lock, new: Lock, *, relative: float = RELATIVE) -> Replay:
     return Replay(same_bytes=False, differences=differences(old, new, relative=relative))
 
 
-def differences(old: Lock, new: Lock, *, relative: float = RELATIVE) -> tuple[Difference, ...]:
+def differences(old: Record, new: Record, *, relative: float = RELATIVE) -> tuple[Difference, ...]:
     """List every place at which two locks differ, in the order of the file.
 
     Parameters
     ----------
-    old, new : Lock
-        Two locks; environment and digest are not looked at.
+    old, new : Lock, or another whole record
+        Two of a kind; environment and digest are not looked at.
     relative : float
         Numbers as near as this, relative to the larger, are the same. Counts must be equal.
 
@@ -130,7 +129,7 @@ def differences(old: Lock, new: Lock, *, relative: float = RELATIVE) -> tuple[Di
     """
     return tuple(
         found
-        for name in Lock.model_fields
+        for name in type(old).model_fields
         if name not in _OUTSIDE
         for found in _between(name, getattr(old, name), getattr(new, name), relative)
     )

@@ -104,15 +104,25 @@ class Environment(Record):
     statsmodels: str = Field(description="Version of statsmodels.")
 
 
+class Scrambled(Record):
+    """The mark of a dry run: its outcome was shuffled, so that nothing in it is a result."""
+
+    seed: Count = Field(description="Seed of the shuffle.")
+    says: str = Field(description="What that means, in one sentence.")
+
+
 class Lock(Record):
     """The whole record of one run.
 
     A lock made in memory carries the digest ``""``; writing fills it in.
     """
 
-    left_out: ClassVar[frozenset[str]] = frozenset({"learned", "sealed_plan", "sealed_answer"})
+    left_out: ClassVar[frozenset[str]] = frozenset({"scrambled", "learned", "sealed_plan", "sealed_answer"})
 
     lock: Literal[1] = Field(description="Version of the lock's language.")
+    scrambled: Scrambled | None = Field(
+        default=None, description="The mark of a dry run on a shuffled outcome; left out of every other."
+    )
     plan: PlanRecord = Field(description="The plan that was run.")
     seal: SealRecord = Field(description="State of its seal.")
     data: DataRecord = Field(description="The table that was read.")

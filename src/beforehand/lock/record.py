@@ -21,6 +21,12 @@ class Record(BaseModel):
     # Fields that are not written where they are null.
     left_out: ClassVar[frozenset[str]] = frozenset()
 
+    # Whether every field has a line of its own in a file; else the whole record is one flow line.
+    in_blocks: ClassVar[bool] = False
+
+    # Fields that are lists of sentences, one a line; other lists of text stand on one.
+    sentences: ClassVar[frozenset[str]] = frozenset()
+
     model_config = ConfigDict(
         frozen=True, extra="forbid", strict=True, allow_inf_nan=False, populate_by_name=True
     )

@@ -30,7 +30,10 @@ HEADER = (
 # Where the digest stops: what a run was made with may differ while the record is the same.
 DIGEST_ENDS_AT = "environment:"
 
-_COVERED = tuple(name for name in Lock.model_fields if name not in {"environment", "digest"})
+# Names of fields that stand in quotes.
+_NOT_PLAIN = frozenset({"true", "false", "null"})
+
+_NOT_COVERED = frozenset({"environment", "digest"})
 
 # Records of which every field has a line of its own; any other is one flow line.
 _IN_BLOCKS: frozenset[type] = frozenset(
@@ -65,8 +68,24 @@ def lock_text(lock: Lock) -> str:
         The text of the file: LF line ends, a final newline, the digest as its last line. The same
         record gives the same text.
     """
-    covered = covered_text(lock)
-    rest = "".join(f"{line}\n" for line in _fields(lock, ("environment",), ""))
+    return record_text(lock)
+
+
+def record_text(record: Record) -> str:
+    """Write out a lock, or any other record that ends in an environment and a digest.
+
+    Parameters
+    ----------
+    record : Record
+        Its last two fields are ``environment`` and ``digest``; the digest is not looked at.
+
+    Returns
+    -------
+    str
+        As of `lock_text`.
+    """
+    covered = covered_text(record)
+    rest = "".join(f"{line}\n" for line in _fields(record, ("environment",), ""))
     return f"{covered}{rest}digest: {string_text(digest_of(covered.encode()))}\n"
 
 
@@ -86,9 +105,10 @@ def sealed_lock(lock: Lock) -> Lock:
     return lock.model_copy(update={"digest": digest_of(covered_text(lock).encode())})
 
 
-def covered_text(lock: Lock) -> str:
-    """Write the part of a lock that its digest covers: all above the environment."""
-    return HEADER + "".join(f"{line}\n" for line in _fields(lock, _COVERED, ""))
+def covered_text(record: Record) -> str:
+    """Write the part of a record that its digest covers: all above the environment."""
+    covered = tuple(name for name in type(record).model_fields if name not in _NOT_COVERED)
+    return HEADER + "".join(f"{line}\n" for line in _fields(record, covered, ""))
 
 
 def one_line(value: object) -> str:
@@ -147,7 +167,12 @@ def _fields_of(kind: type[Record]) -> tuple[tuple[str, ...], Callable[[Any], Any
 @cache
 def _template(names: tuple[str, ...]) -> str:
     """Make a record's flow line with a place for each value."""
-    return "{" + ", ".join([f"{name}: %s" for name in names]) + "}"
+    return "{" + ", ".join([f"{_key(name)}: %s" for name in names]) + "}"
+
+
+def _key(name: str) -> str:
+    """Write the name of a field; a few words would be read as a value (not ``n``, which locks have)."""
+    return f'"{name}"' if name in _NOT_PLAIN else name
 
 
 def _flow(value: Any, formats: Mapping[type, Format] = _COMPUTED) -> str:
@@ -183,18 +208,24 @@ def _fields(record: Record, names: tuple[str, ...], indent: str) -> Iterator[str
         value = getattr(record, name)
         if value is None and name in record.left_out:
             continue
-        if isinstance(value, Record) and type(value) in _IN_BLOCKS:
-            yield f"{indent}{name}:"
-            yield from _block(value, f"{indent}  ")
-        elif isinstance(value, tuple) and value and (isinstance(value[0], Record) or name in _SENTENCES):
+        sentences = name in _SENTENCES or name in record.sentences
+        name = _key(type(record).model_fields[name].alias or name)
+        if isinstance(value, Record) and _in_blocks(value):
+            lines = tuple(_block(value, f"{indent}  "))
+            yield f"{indent}{name}:" if lines else f"{indent}{name}: {{}}"
+            yield from lines
+        elif isinstance(value, tuple) and value and (isinstance(value[0], Record) or sentences):
             yield f"{indent}{name}:"
             for item in value:
                 yield from _item(item, f"{indent}  ")
         elif isinstance(value, Mapping) and _holds_records(value):
             yield f"{indent}{name}:"
             for key, item in value.items():
-                yield f"{indent}  {string_text(key)}:"
-                yield from _block(item, f"{indent}    ")
+                if isinstance(item, Record) and _in_blocks(item):
+                    yield f"{indent}  {string_text(key)}:"
+                    yield from _block(item, f"{indent}    ")
+                else:
+                    yield f"{indent}  {string_text(key)}: {_flow(item)}"
         elif isinstance(value, Mapping) and value and name in _WRITTEN_BY_HAND:
             yield f"{indent}{name}:"
             yield from _plain_block(value, f"{indent}  ")
@@ -209,12 +240,17 @@ def _block(record: Record, indent: str) -> Iterator[str]:
 
 def _item(item: Any, indent: str) -> Iterator[str]:
     """Lines of an item of a list."""
-    if type(item) in _IN_BLOCKS:
+    if isinstance(item, Record) and _in_blocks(item):
         lines = _block(item, f"{indent}  ")
         yield f"{indent}- {next(lines).lstrip(' ')}"
         yield from lines
     else:
         yield f"{indent}- {_flow(item)}"
+
+
+def _in_blocks(record: Record) -> bool:
+    """Whether every field of a record has a line of its own."""
+    return record.in_blocks or type(record) in _IN_BLOCKS
 
 
 def _holds_records(value: Mapping[str, Any]) -> bool:

@@ -11,7 +11,7 @@ from pydantic import AfterValidator, Field, PlainSerializer, Tag
 from beforehand.plan.block import WORD_TAG, Block, by_shape, frozen, tag_of
 from beforehand.plan.limits import Limit
 from beforehand.plan.numbers import ANY_NUMBER, LEVEL_OF_TEST, POSITIVE, SHARE, Real, Whole
-from beforehand.plan.scalars import NAME, TEXT, TRUTH, WORD, Cell, Day, Interval, Rung, Word
+from beforehand.plan.scalars import NAME, TEXT, TRUTH, WORD, Cell, Day, Interval, Pair, Rung, Slope, Word
 
 # A change of R² or a correlation at 0 would always be reached.
 _SHARE_ABOVE_ZERO = Real(above=0.0, at_most=1.0, percent=True)
@@ -303,18 +303,38 @@ class ExpectedPredictor(Block):
     ] = Field(default=frozen({}), description="Share of the rows at each level of a category.")
 
 
+class ExpectedCorrelation(Block):
+    """How closely two predictors are expected to go together, where no table is at hand."""
+
+    between: Annotated[tuple[str, str], Pair()] = Field(description="Two predictors that are numbers.")
+    r: Annotated[float, Real(above=-1.0, below=1.0)] = Field(description="Their correlation.")
+
+
 class Expects(Block):
     """What the analyst expects, for rehearsal."""
+
+    unordered: ClassVar[tuple[str, ...]] = ("correlations",)
 
     residual_sd: Annotated[float, POSITIVE] = Field(
         description="Standard deviation of the outcome about its expectation, in outcome units."
     )
     slopes: Annotated[
-        Mapping[str, Annotated[float, ANY_NUMBER]], AfterValidator(frozen), PlainSerializer(dict)
-    ] = Field(default=frozen({}), description="Predictor to outcome units per unit; 0 for those not named.")
+        Mapping[str, Annotated[float | Mapping[str, float], Slope()]],
+        AfterValidator(frozen),
+        PlainSerializer(dict),
+    ] = Field(
+        default=frozen({}),
+        description=(
+            "Predictor to outcome units per unit, or of a category each level to its difference from the "
+            "baseline; 0 for those not named."
+        ),
+    )
     predictors: (
         Annotated[Mapping[str, ExpectedPredictor], AfterValidator(frozen), PlainSerializer(dict)] | None
     ) = Field(default=None, description="Predictor to its expected mean and sd, or shares of its levels.")
+    correlations: tuple[ExpectedCorrelation, ...] = Field(
+        default=(), description="Expected correlations of predictors; 0 for pairs not named."
+    )
 
 
 Scenario = Literal["scrambled", "noise", "expected", "resample", "hold_out"]
@@ -334,6 +354,13 @@ class Rehearsal(Block):
     scenarios: tuple[Annotated[Scenario, WORD], ...] = Field(
         default=("noise", "expected", "resample"),
         description="Which worlds are tried; expected only where the plan says what it expects.",
+    )
+    folds: Annotated[int, Whole(at_least=2, at_most=1000)] = Field(
+        default=10, description="Parts of the rows that hold_out leaves out one at a time."
+    )
+    leave_out: Annotated[str, NAME] | None = Field(
+        default=None,
+        description="Column whose groups hold_out leaves out instead; errors.cluster_by where there is one.",
     )
 
 

@@ -70,9 +70,14 @@ def _block(block: Block, *, words: bool = True) -> dict[str, Any]:
             continue
         plain = _plain(value, words=words)
         if not words and name in kind.unordered and plain is not None:
-            plain = sorted(plain, key=lambda item: (isinstance(item, str), item))
+            plain = sorted(plain, key=_sortable)
         data[field.alias or name] = plain
     return data
+
+
+def _sortable(item: Any) -> tuple[bool, Any]:
+    """What an item of a list whose order means nothing is sorted by; a block goes by its text."""
+    return isinstance(item, str), str(item) if isinstance(item, dict) else item
 
 
 def _plain(value: Any, *, words: bool) -> Any:

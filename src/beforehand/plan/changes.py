@@ -11,7 +11,12 @@ from beforehand.plan.model import Plan
 NOT_CHANGED = ("language", "title", "question", "written_by", "amendments", "alternatives")
 
 # Values that are replaced whole, since their keys exclude each other.
-_WHOLE = (("errors",), ("missing_data", "fill", "*"), ("expects", "predictors", "*"))
+_WHOLE = (
+    ("errors",),
+    ("missing_data", "fill", "*"),
+    ("expects", "slopes", "*"),
+    ("expects", "predictors", "*"),
+)
 
 # Mappings by name, from which a null takes an entry out.
 _BY_NAME = (("missing_data", "fill"), ("expects", "slopes"), ("expects", "predictors"))

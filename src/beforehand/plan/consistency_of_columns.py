@@ -48,6 +48,7 @@ def _outcome_used(plan: Plan) -> Iterator[Complaint]:
         roles.append(("assumptions.independence.in_order_of", check.in_order_of, "orders the rows"))
     if isinstance(plan.errors, ClusterBy):
         roles.append(("errors.cluster_by", plan.errors.cluster_by, "names the clusters"))
+    roles.append(("rehearsal.leave_out", plan.rehearsal.leave_out, "names the groups"))
     for place, column, part in roles:
         if column == outcome:
             yield Complaint(place, f"is the outcome {outcome!r}; another column {part}", "outcome_used")

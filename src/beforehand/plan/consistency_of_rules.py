@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import itertools
 import math
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable, Iterator, Mapping, Sequence
 
 from beforehand.plan.blocks import FillValue, Transforms
 from beforehand.plan.complaint import Complaint, near, repeated, repeats, unknown
@@ -15,6 +15,9 @@ from beforehand.plan.variables import KeepGroup, KeepPredictor, Predictor
 
 # Shares of levels that an analyst writes down by hand add up to 1 only so far.
 _SHARES_ADD_UP_TO = 0.01
+
+# A matrix nearer to singular cannot be told from one that is, since its entries are rounded.
+_SMALLEST_EIGENVALUE = 1e-10
 
 _NEEDS = {
     "log": "numbers above 0",
@@ -221,14 +224,42 @@ def _out_of_reach(rung: str, name: str, bounds: Bounds | None) -> str:
 
 
 def _expected_slopes(plan: Plan) -> Iterator[Complaint]:
-    """Slopes of known predictors that have one."""
+    """Slopes of known predictors, for a category level by level."""
     columns, categories = _columns(plan), _categories(plan)
-    for name in plan.expects.slopes if plan.expects is not None else ():
+    for name, slope in plan.expects.slopes.items() if plan.expects is not None else ():
         place = keyed("expects.slopes", name)
         if name not in columns:
             yield unknown(place, name, columns)
+        elif isinstance(slope, Mapping):
+            yield from _expected_differences(slope, columns[name], place)
         elif name in categories:
-            yield Complaint(place, f"gives a slope to {name!r}, which is a category", "kind")
+            what = (
+                f"gives a slope to {name!r}, which is a category; "
+                f"give its levels their differences from {categories[name].baseline!r}, {{level: number}}"
+            )
+            yield Complaint(place, what, "kind")
+
+
+def _expected_differences(
+    differences: Mapping[str, float], predictor: Predictor, place: str
+) -> Iterator[Complaint]:
+    """Differences of declared levels from the baseline, which has none from itself."""
+    if predictor.kind == "number":
+        yield Complaint(place, f"gives levels to {predictor.column!r}, which is a number", "kind")
+        return
+    for level, difference in differences.items():
+        if level not in predictor.levels:
+            yield _unknown_level(place, level, predictor)
+        elif level == predictor.baseline and difference != 0.0:
+            what = f"is {number_text(difference)}, but {level!r} is the baseline that the others differ from"
+            yield Complaint(keyed(place, level), what, "levels")
+
+
+def _unknown_level(place: str, level: str, predictor: Predictor) -> Complaint:
+    """A level that the predictor does not have."""
+    hint = near(level, predictor.levels)
+    what = f"names {level!r}, which is not among the levels of {predictor.column!r}{hint}"
+    return Complaint(keyed(place, level), what, "levels")
 
 
 def _expected_predictors(plan: Plan) -> Iterator[Complaint]:
@@ -254,12 +285,50 @@ def _expected_shares(shares: Mapping[str, float], predictor: Predictor, place: s
     """Shares of declared levels that add up to 1."""
     for level in shares:
         if level not in predictor.levels:
-            hint = near(level, predictor.levels)
-            what = f"names {level!r}, which is not among the levels of {predictor.column!r}{hint}"
-            yield Complaint(keyed(place, level), what, "levels")
+            yield _unknown_level(place, level, predictor)
     total = math.fsum(shares.values())
     if shares and abs(total - 1.0) > _SHARES_ADD_UP_TO:
         yield Complaint(place, f"add up to {total:.3g}; shares add up to 1", "shares")
+
+
+def _expected_correlations(plan: Plan) -> Iterator[Complaint]:
+    """Correlations of two known numbers, each pair once, that can all hold at once."""
+    columns = _columns(plan)
+    lines = plan.expects.correlations if plan.expects is not None else ()
+    sound = True
+    for number, line in enumerate(lines):
+        place = f"expects.correlations[{number}].between"
+        for side, name in enumerate(line.between):
+            if name not in columns:
+                sound = False
+                yield unknown(f"{place}[{side}]", name, columns)
+            elif columns[name].kind == "category":
+                what = f"names {name!r}, a category; correlations are of numbers"
+                sound = False
+                yield Complaint(f"{place}[{side}]", what, "kind")
+        if line.between[0] == line.between[1]:
+            what = f"names {line.between[0]!r} twice; a correlation is of two"
+            sound = False
+            yield Complaint(place, what, "correlations")
+    for number, first, _ in repeats([frozenset(line.between) for line in lines]):
+        what = f"names the pair of expects.correlations[{first}] again"
+        yield Complaint(f"expects.correlations[{number}]", what, "repeated")
+        sound = False
+    if sound and lines and not _can_hold([(*line.between, line.r) for line in lines]):
+        what = "cannot all hold at once: with 0 for the other pairs, the matrix is not positive definite"
+        yield Complaint("expects.correlations", what, "correlations")
+
+
+def _can_hold(correlations: Sequence[tuple[str, str, float]]) -> bool:
+    """Whether a correlation matrix of these, and of 0 elsewhere, is positive definite."""
+    import numpy as np
+
+    names = sorted({name for first, second, _ in correlations for name in (first, second)})
+    place = {name: number for number, name in enumerate(names)}
+    matrix = np.eye(len(names))
+    for first, second, r in correlations:
+        matrix[place[first], place[second]] = matrix[place[second], place[first]] = r
+    return bool(np.linalg.eigvalsh(matrix)[0] > _SMALLEST_EIGENVALUE)
 
 
 CHECKS: tuple[Callable[[Plan], Iterator[Complaint]], ...] = (
@@ -271,4 +340,5 @@ CHECKS: tuple[Callable[[Plan], Iterator[Complaint]], ...] = (
     _ladder_of_predictors,
     _expected_slopes,
     _expected_predictors,
+    _expected_correlations,
 )

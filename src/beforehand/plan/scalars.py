@@ -9,16 +9,17 @@ from __future__ import annotations
 
 import codecs
 import datetime
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, Literal, get_args
 
-from pydantic_core import core_schema
+from pydantic_core import PydanticCustomError, core_schema
 
 from beforehand.faults import did_you_mean
 from beforehand.plan.limits import Limit
 from beforehand.plan.numbers import NUMBER, number_from, number_text, shown, wrong
 from beforehand.plan.parsing import FormulaError
-from beforehand.plan.written import Plain
+from beforehand.plan.written import FrozenMapping, Plain
 
 if TYPE_CHECKING:
     from pydantic import GetCoreSchemaHandler, GetJsonSchemaHandler
@@ -252,6 +253,36 @@ class Pair:
         return {"oneOf": [name, pair]} if self._or_one else pair
 
 
+class Slope:
+    """An effect: a number for a number, or ``{level: difference}`` for a category."""
+
+    __slots__ = ()
+
+    @staticmethod
+    def read(value: object) -> float | Mapping[str, float]:
+        """The number, or the mapping of levels to numbers."""
+        if not isinstance(value, Mapping):
+            return _effect(value, "is", "a number, or of a category numbers by level, {level: number}")
+        if not value:
+            raise wrong("slope", "names no level; give each level its difference from the baseline")
+        return FrozenMapping(
+            {level: _effect(item, f"gives {level!r}", "a number") for level, item in value.items()}
+        )
+
+    def __get_pydantic_core_schema__(
+        self, source: Any, handler: GetCoreSchemaHandler
+    ) -> core_schema.CoreSchema:
+        """Read the value here."""
+        return core_schema.no_info_plain_validator_function(self.read)
+
+    def __get_pydantic_json_schema__(
+        self, schema: core_schema.CoreSchema, handler: GetJsonSchemaHandler
+    ) -> JsonSchemaValue:
+        """A number, or numbers by level."""
+        levels = {"type": "object", "minProperties": 1, "additionalProperties": {"type": "number"}}
+        return {"oneOf": [{"type": "number"}, levels]}
+
+
 class Day:
     """A calendar date, ``2026-12-01``."""
 
@@ -280,6 +311,16 @@ class Day:
     ) -> JsonSchemaValue:
         """A date as text."""
         return {"type": "string", "format": "date"}
+
+
+def _effect(value: object, start: str, wanted: str) -> float:
+    """The number of one effect, or a fault that begins and ends as said."""
+    if isinstance(value, Mapping | tuple | list) or value is None or isinstance(value, bool):
+        raise wrong("slope", f"{start} {shown(value)}; it must be {wanted}")
+    try:
+        return number_from(value)
+    except PydanticCustomError:
+        raise wrong("slope", f"{start} {shown(value)}; it must be {wanted}") from None
 
 
 def limit_from(value: object) -> Limit:

@@ -97,16 +97,21 @@ def lock_of(
             name: _alternative(other, plan.alternatives[name], trail, answer, labels)
             for name, other in alternatives.items()
         },
-        environment=Environment(
-            beforehand=__version__,
-            python=platform.python_version(),
-            numpy=np.__version__,
-            scipy=scipy.__version__,
-            # Asked of the installation, since importing either takes longer than most runs.
-            pandas=version("pandas"),
-            statsmodels=version("statsmodels"),
-        ),
+        environment=environment(),
         digest="",
+    )
+
+
+def environment() -> Environment:
+    """What a record is made with: this program, Python and the libraries of numbers."""
+    return Environment(
+        beforehand=__version__,
+        python=platform.python_version(),
+        numpy=np.__version__,
+        scipy=scipy.__version__,
+        # Asked of the installation, since importing either takes longer than most runs.
+        pandas=version("pandas"),
+        statsmodels=version("statsmodels"),
     )
 
 

@@ -14,18 +14,26 @@ from beforehand.screen.finding import key_finding, outcome_unit
 from beforehand.screen.layout import INDENT, Section, Tone, page, shorten, shown, wrapped
 from beforehand.screen.planned import Planned, planned
 from beforehand.screen.quality import quality_lines, rows_used
+from beforehand.screen.quoted import quoted
 from beforehand.screen.removals import kept_lines, removal_lines
 from beforehand.screen.seals import looks_sentence, sealed_lines
 
 if TYPE_CHECKING:
     from beforehand.lock import Answer, Lock, RulingRecord
+    from beforehand.rehearsing.models import RehearsalRecord
     from beforehand.sealing import Look
 
 MOST_SEAL_CHANGES = 5
 
 
 def answer_text(
-    lock: Lock, record: str, *, looks: Sequence[Look] = (), width: int = 100, colour: bool = False
+    lock: Lock,
+    record: str,
+    *,
+    looks: Sequence[Look] = (),
+    rehearsal: RehearsalRecord | None = None,
+    width: int = 100,
+    colour: bool = False,
 ) -> str:
     """The answer as one screen of text.
 
@@ -37,6 +45,8 @@ def answer_text(
         Where the record stands, as the next commands should name it.
     looks : sequence of Look
         Runs on record so far, this one the last.
+    rehearsal : RehearsalRecord, optional
+        Of the same plan: what it says of p-values and R² stands beside them.
     width : int
         Cells of a line; 60 to 140 look right.
     colour : bool
@@ -67,6 +77,9 @@ def answer_text(
     if lock.answer is not None:
         lines = tuple(line for text in lock.answer.cautions for line in wrapped(text, width, first="  - "))
         sections.append(Section(title="Cautions", lines=lines, tone="careful"))
+    if rehearsal is not None:
+        lines = tuple(line for text in quoted(rehearsal) for line in wrapped(text, width, first="  - "))
+        sections.append(Section(title="As rehearsed", lines=lines))
     sections.append(_record(lock, record, looks, width))
     return page([section for section in sections if section.lines], colour=colour)
 

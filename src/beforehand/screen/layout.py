@@ -15,8 +15,8 @@ INDENT = "  "
 GAP = "   "
 NARROW_GAP = "  "
 LONGEST_LABEL = 24
-# A line may break at a space, but not between a number and its percent sign.
-_BREAK = re.compile(r" +(?!%)")
+# A line may break at a space, but not between a number and its percent sign or its error.
+_BREAK = re.compile(r"(?<!±) +(?![%±])")
 
 Align = Literal["left", "right"]
 Tone = Literal["plain", "good", "careful"]

@@ -36,12 +36,14 @@ _ROLES = {
 }
 
 
-def story_text(story: Story, *, width: int = 100, colour: bool = False) -> str:
+def story_text(story: Story, *, beside: Sequence[str] = (), width: int = 100, colour: bool = False) -> str:
     """A story as text.
 
     Parameters
     ----------
     story : Story
+    beside : sequence of str
+        What a rehearsal says of the same predictor, or what else a reader should know.
     width : int
         Cells of a line; 60 to 140 look right.
     colour : bool
@@ -62,6 +64,7 @@ def story_text(story: Story, *, width: int = 100, colour: bool = False) -> str:
             title="In the alternatives",
             lines=labelled([(other.alternative, other.says) for other in story.alternatives], width),
         ),
+        Section(title="Beside it", lines=tuple(line for text in beside for line in wrapped(text, width))),
     ]
     return page([section for section in sections if section.lines or section is head], colour=colour)
 

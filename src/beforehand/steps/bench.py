@@ -104,7 +104,12 @@ class Comparison:
 
 
 class Bench(Protocol):
-    """What supplies a step with numbers."""
+    """What supplies a step with numbers.
+
+    ``step`` is the step that asks; whoever calls the steps sets it.
+    """
+
+    step: str
 
     def design(self, state: State) -> Model:
         """The working model of a state."""
@@ -186,6 +191,6 @@ class Bench(Protocol):
         """Largest adjusted R² among the subsets that ``forced`` admits and whose rest is significant."""
         ...
 
-    def keep_check(self, kind: str, record: object) -> None:
-        """Put a table of the step (correlations, inflation, influence …) in the record."""
+    def keep_check(self, kind: str, make: Callable[[], object]) -> None:
+        """Put a table of the step in the record, if one is kept; only then is it made."""
         ...

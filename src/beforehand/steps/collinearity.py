@@ -20,6 +20,9 @@ STEP = "collinearity"
 # Two evidences that agree to so many significant digits are a tie, and the plan's order decides.
 TIE_DIGITS = 12
 
+# A value further than this share of a limit from it is on its side whatever its last digits are.
+FAR = 1e-9
+
 
 @dataclass(frozen=True, slots=True)
 class Pair:
@@ -41,8 +44,8 @@ def collinearity(state: State, plan: Plan, bench: Bench) -> tuple[State, tuple[R
     """Examine pairs until none is left to examine."""
     rulings = Rulings(STEP, state.rulings_made)
     keeping, order = Keeping(plan), order_of(plan)
-    model = bench.design(state)
-    bench.keep_check("collinearity", model)
+    started = state
+    bench.keep_check("collinearity", lambda: bench.design(started))
     judged: set[frozenset[str]] = set()
     while len(state.working) > 1:
         model = bench.design(state)
@@ -55,6 +58,14 @@ def collinearity(state: State, plan: Plan, bench: Bench) -> tuple[State, tuple[R
         state = _judge(pair, state, plan, bench, keeping, rulings)
         judged = {*judged, pair.key} if state.working == before else set()
     return replace(state, rulings_made=rulings.count), tuple(rulings.made)
+
+
+def reaches(value: float, limit: float) -> bool:
+    """Whether a value, to the digits at which a tie is a tie, is at or over a limit."""
+    # Far from the limit its last digits do not matter, and taking them costs.
+    if abs(value - limit) > FAR * abs(limit):
+        return value > limit
+    return rounded(value) >= limit
 
 
 def rounded(value: float) -> float:
@@ -85,16 +96,15 @@ def _next_pair(
     """The next pair that reaches a declared limit and is not yet judged."""
     limits = plan.collinearity.examine_when
     if limits.correlation_above is not None:
-        for first, second, r in _by_strength(bench.correlations(model), order):
-            if rounded(abs(r)) < limits.correlation_above:
-                break
+        reaching = [
+            pair for pair in bench.correlations(model) if reaches(abs(pair[2]), limits.correlation_above)
+        ]
+        for first, second, r in _by_strength(reaching, order):
             if frozenset((first, second)) not in judged and not _related(first, second, keeping):
                 return Pair(first, second, "correlation", r, limits.correlation_above)
     if limits.vif_above is not None:
-        inflated = sorted(bench.inflation(model), key=lambda item: (-rounded(item[1]), order[item[0]]))
-        for name, vif in inflated:
-            if rounded(vif) < limits.vif_above:
-                break
+        inflated = [item for item in bench.inflation(model) if reaches(item[1], limits.vif_above)]
+        for name, vif in sorted(inflated, key=lambda item: (-rounded(item[1]), order[item[0]])):
             partner = _partner(name, vif, model, bench, order, keeping)
             if partner is not None and frozenset((name, partner)) not in judged:
                 first, second = sorted((name, partner), key=order.__getitem__)

@@ -26,8 +26,8 @@ def final_checks(state: State, plan: Plan, bench: Bench) -> tuple[State, tuple[R
         state = _spread(state, plan, bench, fitted, rulings)
         state = _normality(state, plan, bench, fitted, rulings)
         state = _independence(state, plan, bench, fitted, rulings)
-        bench.keep_check("collinearity", model)
-        bench.keep_check("final_influence", fitted)
+        bench.keep_check("collinearity", lambda: model)
+        bench.keep_check("final_influence", lambda: fitted)
     return replace(state, rulings_made=rulings.count), tuple(rulings.made)
 
 

@@ -222,10 +222,8 @@ def _stay(
     """Rule on the flagged rows that stay, and leave them all out together once."""
     if not compared:
         rulings.add("influence.flag_when", "all rows", "none_flagged", fits=(fitted.id,))
-        bench.keep_check("influence", InfluenceRecord((), None, tuple(removed), None))
+        bench.keep_check("influence", lambda: InfluenceRecord((), None, tuple(removed), None))
         return
-    shown = compared[: plan.influence.record_at_most]
-    kept = tuple(_kept_row(comparison, measures, bench) for comparison in shown)
     changes = [c.change_coefficient for c in compared if c.change_coefficient is not None]
     evidence: dict[str, float | int | str | bool | None] = {
         "rows": len(compared),
@@ -235,8 +233,17 @@ def _stay(
     ruling = rulings.add(
         "influence.remove_when", "flagged rows", "flagged_rows_stay", fits=(fitted.id,), evidence=evidence
     )
-    joint = _together(compared, fitted, bench)
-    bench.keep_check("influence", InfluenceRecord(kept, ruling.id, tuple(removed), joint))
+
+    def record() -> InfluenceRecord:
+        shown = compared[: plan.influence.record_at_most]
+        return InfluenceRecord(
+            kept=tuple(_kept_row(comparison, measures, bench) for comparison in shown),
+            kept_ruling=ruling.id,
+            removed=tuple(removed),
+            joint=_together(compared, fitted, bench),
+        )
+
+    bench.keep_check("influence", record)
 
 
 def _together(

@@ -18,13 +18,12 @@ from beforehand.fit.fitting import fit_of
 from beforehand.fit.moments import Moments
 from beforehand.fit.results import Check, Fit
 from beforehand.fit.rows import RowValues
-from beforehand.fit.subsets import best_subsets
 from beforehand.fit.tableau import Tableau
 from beforehand.plan import Plan
 from beforehand.steps.bench import Checked, Comparison, Fitted, Linked, Measures, Positions
+from beforehand.steps.best import best_subset
 from beforehand.steps.comparisons import compared
 from beforehand.steps.designing import Designer
-from beforehand.steps.keeping import Keeping
 from beforehand.steps.learned import NOTHING, Learned
 from beforehand.steps.linking import linked_of
 from beforehand.steps.profiles import learned
@@ -280,33 +279,18 @@ class RecordingBench:
     ) -> Model | None:
         """Largest adjusted R² among lawful subsets whose other predictors are significant."""
         moments = self._workings.moments(model.rows, (*model.keys, model.outcome))
-        places = {key: place for place, key in enumerate(model.keys)}
-        keeping = Keeping(self._plan)
-        found = best_subsets(
+        return best_subset(
+            self._plan,
+            model,
             moments.cross((*model.keys, model.outcome), centred=model.intercept),
-            [tuple(places[key] for key in term.keys) for term in model.terms],
-            n=model.rows.n,
-            constant=int(model.intercept),
-            alpha=alpha,
-            lawful=lambda chosen: forced(tuple(model.names[place] for place in chosen)),
-            held=lambda place: keeping.hold(model.names[place], model.names, None) is not None,
+            alpha,
+            forced,
+            lambda one: fit_of(self.tableau(one), blocks_of(one)).adjusted_r_squared,
         )
-        if not found:
-            return None
-        models = [
-            model.without(*(n for place, n in enumerate(model.names) if place not in subset.places))
-            for subset in found
-        ]
-        fits = [fit_of(self.tableau(one), blocks_of(one)) for one in models]
-        # Ties to exactness go to the smaller model, then to the earlier predictors.
-        best = min(
-            range(len(models)),
-            key=lambda at: (-fits[at].adjusted_r_squared, len(models[at].terms), found[at].places),
-        )
-        return models[best]
 
-    def keep_check(self, kind: str, record: object) -> None:
+    def keep_check(self, kind: str, make: Callable[[], object]) -> None:
         """Put a table of the step in the record."""
+        record = make()
         if kind == "collinearity" and isinstance(record, Model):
             if record.terms:
                 self.record.collinearity.append(self._collinearity(record))

@@ -54,6 +54,12 @@ class TableSource:
             return self
         return TableSource(self._table, np.delete(self._kept, gone), self._patched)
 
+    def with_column(self, column: str, values: FloatArray) -> TableSource:
+        """The same rows with other values, shape (n_rows,), in one column."""
+        whole = np.full(self._table.n_rows, np.nan)
+        whole[self._kept] = values
+        return TableSource(self._table, self._kept, {**self._patched, column: whole}, whole=self._whole)
+
     @property
     def n_rows(self) -> int:
         """Rows of the base."""

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 
+from beforehand.fit.exponents import NoExponent
 from beforehand.fit.sweeping import RankDeficient
 from beforehand.plan import Plan
 from beforehand.steps.bench import Bench, Checked, Fitted
@@ -125,7 +126,13 @@ def _outcome(state: State, plan: Plan, bench: Bench, rulings: Rulings) -> State:
                 "outcome.transforms", name, "rung_not_applicable", evidence={"rung": rung}, because=reason
             )
             continue
-        transform: Transform = bench.learn(model, "", rung)
+        try:
+            transform: Transform = bench.learn(model, "", rung)
+        except NoExponent as error:
+            rulings.add(
+                "outcome.transforms", name, "rung_not_applicable", evidence={"rung": rung}, because=str(error)
+            )
+            continue
         trial = replace(state, outcome=transform)
         fitted = bench.fit(bench.design(trial), f"outcome under {rung}")
         checks = _outcome_checks(fitted, plan, bench)

@@ -108,7 +108,8 @@ def _is_used(plan: Plan, name: str) -> bool:
     cluster = getattr(plan.errors, "cluster_by", None)
     independence = plan.assumptions.independence
     order = None if independence == "skip" else independence.in_order_of
-    return name in (cluster, order) or any(line.column == name for line in plan.eligibility)
+    groups = plan.rehearsal.leave_out
+    return name in (cluster, order, groups) or any(line.column == name for line in plan.eligibility)
 
 
 def _label_faults(plan: Plan, read: AsRead, name_row: Callable[[int], str]) -> list[Fault]:

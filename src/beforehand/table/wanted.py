@@ -50,6 +50,13 @@ def wanted_of(plan: Plan) -> Mapping[str, Wanted]:
     cluster = getattr(plan.errors, "cluster_by", None)
     if cluster is not None:
         want(cluster, "text", "errors.cluster_by")
+    if plan.rehearsal.leave_out is not None:
+        want(plan.rehearsal.leave_out, "text", "rehearsal.leave_out")
     if plan.data.row_label is not None:
         want(plan.data.row_label, "text", "data.row_label")
     return found
+
+
+def group_column(plan: Plan) -> str | None:
+    """The column whose groups of rows are left out one at a time; None where folds are drawn."""
+    return plan.rehearsal.leave_out or getattr(plan.errors, "cluster_by", None)
