@@ -13,7 +13,7 @@ from beforehand.lock import Lock, read_lock
 from beforehand.lock.difference import Replay, replay_of
 from beforehand.names import beside
 from beforehand.plan import Plan, decisions_digest, read_plan
-from beforehand.rehearsing.engines import Engine
+from beforehand.rehearsing.engines import ONE_WORKER, Engine
 from beforehand.rehearsing.models import RehearsalRecord, ScrambledRun
 from beforehand.rehearsing.observed import Observed
 from beforehand.rehearsing.reading import read_rehearsal
@@ -66,7 +66,7 @@ def rehearse(
     replicates: int | None = None,
     seed: int | None = None,
     rows: tuple[int, ...] = (),
-    engine: Engine = Engine(),  # noqa: B008 - frozen
+    engine: Engine = ONE_WORKER,
     resume: bool = False,
     keep: bool = False,
     progress: Progress | None = None,
@@ -150,7 +150,7 @@ def rehearse_again(
     plan: str | os.PathLike[str] | None = None,
     data: str | os.PathLike[str] | None = None,
     *,
-    engine: Engine = Engine(),  # noqa: B008 - frozen
+    engine: Engine = ONE_WORKER,
     progress: Progress | None = None,
 ) -> Replay:
     """Compute a rehearsal again and say which figure, if any, comes out differently.

@@ -17,6 +17,7 @@ from beforehand.version import __version__
 COMMANDS = [
     "draft",
     "check",
+    "rehearse",
     "seal",
     "run",
     "replay",
@@ -54,9 +55,10 @@ def test_the_help_of_the_program_is_this_text(command: Command) -> None:
         "Commands:\n"
         "  draft     Draft a plan for a table.\n"
         "  check     Check a plan, and its table against it.\n"
+        "  rehearse  Try a plan on worlds whose truth is known, and say how it does.\n"
         "  seal      Seal a plan: fix it, and be able to show that it came first.\n"
         "  run       Run a plan, write the lockfile, print the answer.\n"
-        "  replay    Compute a lockfile again and say what differs.\n"
+        "  replay    Compute a record again and say what differs.\n"
         "  trace     Tell the story of one predictor or one row.\n"
         "  compare   Say what changed between two plans or two lockfiles.\n"
         "  refresh   Run a plan on refreshed data and say whether the answer holds.\n"

@@ -107,7 +107,8 @@ def test_run_as_json_has_stable_keys_and_no_nan(
     done = invoke("run", tmp_path / "hives.plan.yaml", "--json")
     result = json.loads(done.stdout, parse_constant=lambda word: pytest.fail(word))
     assert list(result) == [
-        "status", "record", "digest", "plan", "seal", "looks", "data", "answer", "sealed_answer", "ledger",
+        "status", "record", "digest", "plan", "seal", "looks", "rehearsed", "data", "answer", "sealed_answer",
+        "ledger",
         "rows_removed", "predictors", "alternatives", "rulings", "fits",
     ]  # fmt: skip
     assert result["status"] == "adopted"

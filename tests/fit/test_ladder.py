@@ -10,7 +10,7 @@ import pytest
 from scipy import special, stats
 
 from beforehand.fit.elementary import log
-from beforehand.fit.exponents import outcome_exponent, predictor_exponent
+from beforehand.fit.exponents import NoExponent, outcome_exponent, predictor_exponent
 from beforehand.fit.ladder import RUNGS, apply, domain, smeared, smearing_factor, undo
 from beforehand.fit.sums import exact_sum
 
@@ -143,9 +143,9 @@ def test_outcome_exponent_at_an_end() -> None:
 
 def test_outcome_exponent_of_an_exact_fit() -> None:
     """An outcome that is fitted exactly has no likelihood."""
-    with pytest.raises(ValueError, match=r"^the outcome is fitted exactly under the exponent -2$"):
+    with pytest.raises(NoExponent, match=r"^the outcome is fitted exactly under the exponent -2$"):
         outcome_exponent(lambda _: 0.0, n=10, log_total=1.0)
-    with pytest.raises(ValueError, match=r"^the outcome cannot be fitted under any exponent$"):
+    with pytest.raises(NoExponent, match=r"^the outcome cannot be fitted under any exponent$"):
         outcome_exponent(lambda _: math.inf, n=10, log_total=1.0)
 
 

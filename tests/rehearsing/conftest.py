@@ -50,6 +50,9 @@ def made(subjects: Subjects) -> MakeTrials:
 
     def make(count: int, **given: Any) -> Trials:
         blank = empty(count, subjects, given.pop("rulings", 0))
+        if "adopted" in given:
+            # What was adopted stands in the model.
+            given.setdefault("present", given["adopted"])
         arrays = {
             name: np.asarray(value).astype(getattr(blank, name).dtype, copy=True)
             for name, value in given.items()

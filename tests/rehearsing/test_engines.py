@@ -247,7 +247,9 @@ def test_a_part_of_another_rehearsal_is_a_fault_only_when_it_would_be_gone_on_wi
         Saved(part, "other", resume=True)
     with Saved(part, "other", resume=False) as saved:
         assert saved.blocks("toy") == {}
-    assert part.read_bytes() == b"beforehand rehearsal part 1 other\n"
+        assert part.read_bytes() == b"beforehand rehearsal part 1 other\n"
+    # Nothing was finished, so that nothing is left.
+    assert not part.exists()
 
 
 @pytest.mark.parametrize("resume", [True, False])

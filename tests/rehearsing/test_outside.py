@@ -12,12 +12,6 @@ import numpy as np
 import pandas as pd
 import pytest
 from scipy import stats
-
-from beforehand.rehearsing.expected import drawn_worlds, true_slopes
-from beforehand.rehearsing.noise import noise_world
-from beforehand.rehearsing.stage import setting_on
-from beforehand.rehearsing.summaries import expected_figures, noise_figures
-from beforehand.rehearsing.trial import run_trial
 from tests.rehearsing.invented import (
     NO_GATE,
     a_plan,
@@ -30,6 +24,12 @@ from tests.rehearsing.invented import (
     numbers,
     without_gate,
 )
+
+from beforehand.rehearsing.expected import drawn_worlds, true_slopes
+from beforehand.rehearsing.noise import noise_world
+from beforehand.rehearsing.stage import setting_on
+from beforehand.rehearsing.summaries import expected_figures, noise_figures
+from beforehand.rehearsing.trial import run_trial
 
 # -- Freedman (1983) ------------------------------------------------------------------------------
 

@@ -12,12 +12,12 @@ import numpy as np
 import pandas as pd
 import pytest
 import statsmodels.api as sm
+from tests.rehearsing.invented import a_plan, a_stage, names, near, near_mean, numbers, without_gate
 
 from beforehand.rehearsing.hold_out import held_out_of, hold_out_world
 from beforehand.rehearsing.resample import BOOTSTRAP, HALF_SAMPLES, SampleWorld
 from beforehand.rehearsing.summaries import hold_out_figures, resample_figures
 from beforehand.table import table_from_frame
-from tests.rehearsing.invented import a_plan, a_stage, names, near, near_mean, numbers, without_gate
 
 # Woods, Steinour & Starke (1932); Hald (1952) p. 647: heat of setting cement by its compounds.
 HALD = pd.DataFrame(

@@ -74,7 +74,7 @@ def test_many_predictors_have_their_most_telling_pairs_only() -> None:
     adopted[:, 29] = ~adopted[:, 28] & (random.random(400) < 0.6)
     from beforehand.rehearsing.trials import empty
 
-    half = replace(empty(400, subjects), adopted=adopted)
+    half = replace(empty(400, subjects), adopted=adopted, present=adopted)
     pairs = resample_figures(half, half, subjects, None, 0.05).half_samples.pairs
     assert 50 <= len(pairs) <= 100
     assert list(pairs) == sorted(pairs, key=lambda pair: -pair.both.value)

@@ -9,6 +9,8 @@ import pandas as pd
 import pytest
 from hypothesis import HealthCheck, given, seed, settings
 from hypothesis import strategies as st
+from tests.test_random_plans import plans as plans_with_trouble
+from tests.test_random_plans import tables as tables_with_trouble
 
 from beforehand.faults import BeforehandError
 from beforehand.fit.doubles import NotQuick
@@ -18,12 +20,17 @@ from beforehand.rehearsing.trial import run_trial
 from beforehand.rehearsing.trials import Trials
 from beforehand.running import run_steps
 from beforehand.table import table_from_frame
-from tests.test_random_plans import plans as plans_with_trouble
-from tests.test_random_plans import tables as tables_with_trouble
 
 NAMES = ("a", "b", "c", "d", "e", "f")
 RUNGS = ("square", "cube", "square_root", "cube_root", "log", "reciprocal", "box_cox")
 STEPS = ("missing_data", "transforms", "collinearity", "influence", "selection", "final_checks")
+
+SPREAD = ("breusch_pagan", "white")
+NORMAL = ("jarque_bera", "shapiro_wilk")
+METHODS = ("backward", "backward", "none", "backward_aic", "backward_bic", "best_subset")
+ERRORS = (
+    "classical", "classical", "hc3", "hc1", {"cluster_by": "site"}, {"autocorrelation_lags": 2},
+)  # fmt: skip
 
 CALM = settings(
     max_examples=300,
@@ -111,8 +118,8 @@ def plans(draw) -> dict:
         "missing_data": {"remove_predictor_above": draw(st.sampled_from(["10%", "60%"]))},
         "assumptions": {
             "curvature": {"alpha": draw(st.sampled_from([0.01, 0.2]))},
-            "equal_spread": {"test": draw(st.sampled_from(["breusch_pagan", "white"])), "alpha": 0.1},
-            "normal_residuals": {"test": draw(st.sampled_from(["jarque_bera", "shapiro_wilk"])), "alpha": 0.05},
+            "equal_spread": {"test": draw(st.sampled_from(SPREAD)), "alpha": 0.1},
+            "normal_residuals": {"test": draw(st.sampled_from(NORMAL)), "alpha": 0.05},
             "independence": {"test": "breusch_godfrey", "lags": 2, "alpha": 0.1, "in_order_of": "t"},
         },
         "transforms": {
@@ -138,14 +145,10 @@ def plans(draw) -> dict:
             "at_most": draw(st.sampled_from(["0%", "4%"])),
         },
         "selection": {
-            "method": draw(
-                st.sampled_from(["backward", "backward", "none", "backward_aic", "backward_bic", "best_subset"])
-            )
+            "method": draw(st.sampled_from(METHODS))
         },
         "weak_model": {"with_theory": draw(st.sampled_from(["report", "try_selection"]))},
-        "errors": draw(
-            st.sampled_from(["classical", "classical", "hc3", "hc1", {"cluster_by": "site"}, {"autocorrelation_lags": 2}])
-        ),
+        "errors": draw(st.sampled_from(ERRORS)),
     }  # fmt: skip
     if draw(st.booleans()):
         plan["missing_data"]["fill"] = {names[0]: draw(st.sampled_from(["mean", "median", "regression"]))}

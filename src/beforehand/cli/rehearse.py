@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from enum import StrEnum
 from pathlib import Path
 from typing import Annotated
@@ -31,6 +32,22 @@ class EngineKind(StrEnum):
     dask = "dask"
 
 
+MOST_REPLICATES = 10_000_000
+LARGEST_SEED = 2**63 - 1
+MOST_WORKERS = 1024
+
+
+def _whole_number(least: int, most: int) -> Callable[[int | None], int | None]:
+    """A check of an option that takes a whole number within bounds."""
+
+    def check(value: int | None) -> int | None:
+        if value is not None and not least <= value <= most:
+            raise typer.BadParameter(f"{value} is not between {least:,} and {most:,}")
+        return value
+
+    return check
+
+
 # With fewer, the error of a share near 5 % is more than two points.
 FEW = 100
 
@@ -42,7 +59,9 @@ def rehearse(
         list[Scenario] | None,
         typer.Option(
             "--scenario",
-            help="Rehearse this world; may be given several times. Without it: those of the plan.",
+            metavar="WORLD",
+            help="Rehearse this world: scrambled, noise, expected, resample or hold_out; may be given "
+            "several times. Without it: those of the plan.",
             show_default=False,
         ),
     ] = None,
@@ -51,14 +70,18 @@ def rehearse(
         typer.Option(
             "--replicates",
             metavar="N",
-            min=1,
-            max=10_000_000,
+            callback=_whole_number(1, MOST_REPLICATES),
             help="Tables of each world. Without it: as many as the plan says.",
         ),
     ] = None,
     seed: Annotated[
         int | None,
-        typer.Option("--seed", metavar="N", min=0, help="Seed. Without it: that of the plan."),
+        typer.Option(
+            "--seed",
+            metavar="N",
+            callback=_whole_number(0, LARGEST_SEED),
+            help="Seed. Without it: that of the plan.",
+        ),
     ] = None,
     rows: Annotated[
         str | None,
@@ -73,13 +96,19 @@ def rehearse(
         typer.Option(
             "--workers",
             metavar="N",
-            min=1,
+            callback=_whole_number(1, MOST_WORKERS),
             help="Processes. Without it: one for each core.",
             show_default=False,
         ),
     ] = None,
     engine: Annotated[
-        EngineKind, typer.Option("--engine", help="This machine, or a Dask cluster that is there already.")
+        EngineKind,
+        typer.Option(
+            "--engine",
+            metavar="KIND",
+            help="local, this machine, or dask, a cluster that is there already.",
+            show_default=False,
+        ),
     ] = EngineKind.local,
     scheduler: Annotated[
         str | None,

@@ -23,10 +23,11 @@ def replay(
     as_json: AsJson = False,
     progress: ShowProgress = False,
 ) -> None:
-    """Compute a lockfile again and say what differs.
+    """Compute a record again and say what differs.
 
-    Bytes are compared first, then every number and ruling; each difference is told with its
-    place. Ends with 0 when nothing differs and with 3 when something does.
+    A lockfile, or the record of a rehearsal. Bytes are compared first, then every number and
+    ruling; each difference is told with its place. Ends with 0 when nothing differs and with 3
+    when something does.
     """
     from beforehand import api
 

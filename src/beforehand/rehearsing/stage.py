@@ -132,7 +132,7 @@ def table_trials(
 
 def setting_on(plan: Plan, table: Table) -> Setting:
     """What the steps after missing data start from, on a table."""
-    state, base, made = missing_data(plan, table, declared="missing_data" in plan.steps)
+    state, base, made = missing_data(plan, table, declared="missing_data" in plan.steps, described=False)
     return setting_of(plan, table, base, state, made)
 
 

@@ -10,7 +10,7 @@ from pathlib import Path
 from beforehand.plan import Plan, decisions_digest, whole_digest
 from beforehand.record.whole import environment
 from beforehand.rehearsing.batch import Batch
-from beforehand.rehearsing.engines import BLOCK, Engine, Progress, Saved, rehearsal_key, run_world
+from beforehand.rehearsing.engines import BLOCK, ONE_WORKER, Engine, Progress, Saved, rehearsal_key, run_world
 from beforehand.rehearsing.expected import declared_subjects, drawn_worlds, expected_world, true_slopes
 from beforehand.rehearsing.hold_out import held_out_of, hold_out_world
 from beforehand.rehearsing.models import (
@@ -65,7 +65,7 @@ class Asked:
     replicates: int
     seed: int
     rows: tuple[int, ...] = ()
-    engine: Engine = Engine()
+    engine: Engine = ONE_WORKER
     left_out: tuple[str, ...] = ()
     part: Path | None = None
     resume: bool = False

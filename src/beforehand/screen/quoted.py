@@ -36,7 +36,7 @@ def quoted(record: RehearsalRecord) -> tuple[str, ...]:
             f"{_bracketed(made.noise.any_adopted)}."
         )
         real = made.noise.calibrated
-        if real is not None:
+        if real is not None and real.r_squared > 0:
             said.append(
                 f"R² of {figure(real.r_squared)} or more comes up in pure noise in "
                 f"{_bracketed(real.p_of_r_squared)}."

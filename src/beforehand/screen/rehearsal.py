@@ -186,7 +186,7 @@ def _noise(made: NoiseFigures, width: int) -> Section:
     if made.full_p is not None:
         lines += wrapped(_tested(made.full_p), width)
     real = made.calibrated
-    if real is not None:
+    if real is not None and real.r_squared > 0:
         told = f"The real answer's R² of {figure(real.r_squared)} or more comes up in "
         told += f"{percent_text(real.p_of_r_squared)} of them"
         if real.p_of_model_p is not None:

@@ -26,7 +26,7 @@ def percent_text(share: Estimate | None, *, bracketed: bool = False) -> str:
     if not error:
         return f"{figure(value, PLAIN_DIGITS).removesuffix('.00')} %"
     decimals = _decimals(100 * error, MOST_DECIMALS)
-    told, off = f"{value:.{decimals}f} %", f"{100 * error:.{decimals}f}"
+    told, off = f"{_signed(f'{value:.{decimals}f}')} %", f"{100 * error:.{decimals}f}"
     return f"{told} (± {off} %)" if bracketed else f"{told} ± {off}"
 
 
@@ -39,10 +39,13 @@ def number_text(estimate: Estimate | None) -> str:
     if magnitude(estimate.mc_error) < -6:
         return f"{figure(estimate.value, 6)} ± {estimate.mc_error:.0e}"
     decimals = _decimals(estimate.mc_error, 6)
-    value = f"{estimate.value:,.{decimals}f}"
-    if not value.strip("-0.,"):
-        value = value.removeprefix("-")
+    value = _signed(f"{estimate.value:,.{decimals}f}")
     return f"{value} ± {estimate.mc_error:,.{decimals}f}"
+
+
+def _signed(number: str) -> str:
+    """A number whose digits are all 0 without its sign."""
+    return number if number.strip("-0.,") else number.removeprefix("-")
 
 
 def _decimals(error: float, most: int) -> int:

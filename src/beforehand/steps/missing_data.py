@@ -78,7 +78,7 @@ class Base:
 
 
 def missing_data(
-    plan: Plan, table: Table, *, declared: bool, learned: Learned = NOTHING
+    plan: Plan, table: Table, *, declared: bool, learned: Learned = NOTHING, described: bool = True
 ) -> tuple[State, Base, tuple[Ruling, ...]]:
     """Remove predictors that are too empty, fill what has a fill, remove what is still incomplete.
 
@@ -87,6 +87,8 @@ def missing_data(
     declared : bool
         Whether the plan's ``steps`` name this step. Without it no predictor leaves and no cell is
         filled, and incomplete rows still leave, since no fit can use them.
+    described : bool
+        Whether rows that leave are described beside those that stay; no ruling rests on that.
     """
     rulings = Rulings(STEP, 0)
     working = tuple(p.column for p in plan.predictors) + tuple(product_name(p) for p in plan.products)
@@ -108,7 +110,7 @@ def missing_data(
             incomplete |= masks[name]
     stays = has_outcome & ~incomplete
     missing = tuple(
-        _missing(predictor.column, table, masks, has_outcome, incomplete, stays, rows)
+        _missing(predictor.column, table, masks, has_outcome, incomplete, stays, rows, described)
         for predictor in plan.predictors
     )
     state = _incomplete_rows(state, table, incomplete, missing, rows, rulings)
@@ -295,12 +297,13 @@ def _missing(
     incomplete: Mask,
     stays: Mask,
     rows: int,
+    described: bool,
 ) -> Missing:
     """Counts of one predictor, and the standardized difference of the rows that left (Austin 2009)."""
     column = table.columns[name]
     left = incomplete & has_outcome
     difference: float | None = None
-    if column.kind == "number":
+    if column.kind == "number" and described:
         values_left = column.values[left & ~masks[name]]
         values_stay = column.values[stays & ~masks[name]]
         if len(values_left) > 1 and len(values_stay) > 1:

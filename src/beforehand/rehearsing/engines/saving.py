@@ -77,6 +77,7 @@ class Saved:
     def __init__(self, path: Path, key: str, *, resume: bool, name: str | None = None) -> None:
         self._path, self._name = path, name or str(path)
         self._blocks: dict[str, dict[Block, Trials]] = {}
+        self._holds_something = False
         head = _HEAD + key.encode() + b"\n"
         content = self._content()
         if content is not None:
@@ -87,6 +88,7 @@ class Saved:
             end = len(head) if content.startswith(head) else 0
             for world, block, trials, stop in _read_blocks(content, end):
                 self._blocks.setdefault(world, {})[block] = trials
+                self._holds_something = True
                 end = stop
         with self._writing():
             self._file = io.BufferedWriter(io.FileIO(path, "r+" if end else "w"))
@@ -100,7 +102,11 @@ class Saved:
         return self
 
     def __exit__(self, *_: object) -> None:
-        self.close()
+        if self._holds_something:
+            self.close()
+        else:
+            # A fault before the first block was finished leaves nothing behind.
+            self.remove()
 
     def blocks(self, world: str) -> Mapping[Block, Trials]:
         """Blocks of a world that were finished before; handed out once, so that they are not held twice."""
@@ -115,6 +121,7 @@ class Saved:
         }  # fmt: skip
         with self._writing():
             self._add(json.dumps(line).encode() + b"\n" + content)
+        self._holds_something = True
 
     def close(self) -> None:
         """Close the file and leave it where it is."""
