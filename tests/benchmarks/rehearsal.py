@@ -10,16 +10,14 @@ blocks, statuses, coefficients and R² of every replicate.
 from __future__ import annotations
 
 import argparse
-import contextlib
 import json
 import os
-import resource
 import statistics
 import subprocess
 import sys
 import time
 from collections.abc import Callable, Iterable, Sequence
-from dataclasses import dataclass
+from dataclasses import fields
 from pathlib import Path
 from typing import Any
 
@@ -34,6 +32,7 @@ for _variable in ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS"):
 import numpy as np
 import pandas as pd
 from library_twin import loop, twin
+from measuring import Line, both, median_time, mib, ms, peak, timed
 from threadpoolctl import threadpool_limits
 
 from beforehand.plan import plan_from_mapping
@@ -44,6 +43,7 @@ from beforehand.rehearsing.resample import BOOTSTRAP, HALF_SAMPLES, SampleWorld
 from beforehand.rehearsing.seeds import generator
 from beforehand.rehearsing.stage import Stage
 from beforehand.rehearsing.trials import STATUSES
+from beforehand.rehearsing.whole import WIDE_BLOCK, block_of
 from beforehand.running import ranks_in_base
 from beforehand.table import table_from_frame
 
@@ -55,36 +55,6 @@ GATE = "F gate first"
 NO_GATE = "always eliminates"
 
 PARTS = ("selection", "large", "products", "steps", "workers", "memory")
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Line:
-    """One measured ratio beside its goal, of ours to the other or of the other to ours.
-
-    Attributes
-    ----------
-    what, ours, other : str
-    ratio : float
-    goal : float or None
-        None where there is none.
-    at_most : bool
-        Whether the goal is an upper limit.
-    """
-
-    what: str
-    ours: str
-    other: str
-    ratio: float
-    goal: float | None = None
-    at_most: bool = False
-
-    def told(self) -> str:
-        """The line as it is printed."""
-        met = goal = ""
-        if self.goal is not None:
-            goal = f"{'≤' if self.at_most else '≥'} {self.goal:g}"
-            met = "met" if (self.ratio <= self.goal) is self.at_most or self.ratio == self.goal else "not met"
-        return f"{self.what:70}{self.ours:>12}{self.other:>12}{self.ratio:>9.2f}{goal:>8}  {met}".rstrip()
 
 
 def main(arguments: Sequence[str] | None = None) -> int:
@@ -207,12 +177,12 @@ def selection_only(rows: int, replicates: int, sampled: int, repeats: int) -> It
         }
         for name, (world, other) in worlds.items():
             fits = statistics.mean(other(replicate)[1] for replicate in range(sampled))
-            ours, plain = _both(
-                lambda world=world: run_world(world, replicates), replicates,
+            ours, plain = both(
+                lambda world=world: run_world(world, replicates, block=block_of(rows, wide=True)), replicates,
                 lambda other=other: [other(one) for one in range(sampled)], sampled, repeats,
             )  # fmt: skip
             what = f"{name}, {rows:,} x {COLUMNS}, {GATE if gate else NO_GATE}, loop of {fits:.1f} fits"
-            yield Line(what=what, ours=_ms(ours), other=_ms(plain), ratio=plain / ours, goal=150)
+            yield Line(what=what, ours=ms(ours), other=ms(plain), ratio=plain / ours, goal=150)
 
 
 def bare_products(rows: int, replicates: int, repeats: int) -> Iterable[Line]:
@@ -221,13 +191,13 @@ def bare_products(rows: int, replicates: int, repeats: int) -> Iterable[Line]:
     y, design = _raw(stage)
     n, rng = stage.n_rows, np.random.default_rng(SEED)
     columns = np.asfortranarray(design[:, 1:])
-    many = rng.normal(size=(BLOCK, n))
+    many = rng.normal(size=(WIDE_BLOCK, n))
     upper = np.triu_indices(COLUMNS + 1)
     part = np.column_stack([columns, y])
     # Sums, and products, of the columns and the outcome.
     wide = np.column_stack([part, part[:, upper[0]] * part[:, upper[1]]])
-    weights = rng.poisson(1.0, size=(BLOCK, n)).astype(float)
-    blocks = replicates // BLOCK
+    weights = rng.poisson(1.0, size=(WIDE_BLOCK, n)).astype(float)
+    blocks = replicates // WIDE_BLOCK
 
     def draw_noise() -> None:
         for replicate in range(replicates):
@@ -249,18 +219,18 @@ def bare_products(rows: int, replicates: int, repeats: int) -> Iterable[Line]:
          lambda: weights @ wide, draw_again),
     ]  # fmt: skip
     for name, world, product, draw in cases:
-        ours, bare = _both(
-            lambda world=world: run_world(world, replicates), replicates,
+        ours, bare = both(
+            lambda world=world: run_world(world, replicates, block=block_of(rows, wide=True)), replicates,
             lambda product=product: [product() for _ in range(blocks)], replicates, repeats,
         )  # fmt: skip
-        drawn = _median_time(draw, repeats) / replicates
+        drawn = median_time(draw, repeats) / replicates
         what = f"{name}, {rows:,} x {COLUMNS}, over its bare product"
         yield Line(
-            what=what, ours=_ms(ours), other=_ms(bare), ratio=ours / bare, goal=3, at_most=True
+            what=what, ours=ms(ours), other=ms(bare), ratio=ours / bare, goal=3, at_most=True
         )  # fmt: skip
-        yield Line(what="    the draws alone, as a share of ours", ours=_ms(ours), other=_ms(drawn),
+        yield Line(what="    the draws alone, as a share of ours", ours=ms(ours), other=ms(drawn),
                    ratio=drawn / ours)  # fmt: skip
-        yield Line(what="    product and draws, over these", ours=_ms(ours), other=_ms(bare + drawn),
+        yield Line(what="    product and draws, over these", ours=ms(ours), other=ms(bare + drawn),
                    ratio=ours / (bare + drawn))  # fmt: skip
 
 
@@ -295,7 +265,7 @@ def every_step(replicates: int, sampled: int, repeats: int) -> Iterable[Line]:
         )
         fits = statistics.mean(answer.fits for answer in answers)
         for closed in (False, True):
-            ours, other = _both(
+            ours, other = both(
                 lambda world=world: run_world(world, replicates), replicates,
                 lambda closed=closed, frames=frames: [twin(own, closed_form=closed) for own in frames],
                 sampled, repeats,
@@ -304,7 +274,7 @@ def every_step(replicates: int, sampled: int, repeats: int) -> Iterable[Line]:
                 what = f"every step, {name}, 1,000 x {COLUMNS}, twin of {fits:.0f} fits"
             else:
                 what = f"    residuals in closed form; same answers: {same} of {sampled}"
-            yield Line(what=what, ours=_ms(ours), other=_ms(other), ratio=other / ours, goal=60)
+            yield Line(what=what, ours=ms(ours), other=ms(other), ratio=other / ours, goal=60)
 
 
 def two_workers(replicates: int, repeats: int) -> Iterable[Line]:
@@ -318,15 +288,15 @@ def two_workers(replicates: int, repeats: int) -> Iterable[Line]:
     start = time.perf_counter()
     run_world(world, 2 * BLOCK, engine=two)
     first = time.perf_counter() - start
-    both, one, counted, counted_alone = (
+    shared, alone, counted, counted_alone = (
         statistics.median(times)
         for times in zip(
             *(
                 (
-                    _time(lambda: run_world(world, replicates, engine=two), time.perf_counter),
-                    _time(lambda: run_world(world, replicates), time.perf_counter),
-                    _time(lambda: pool(delayed(_count)() for _ in range(2)), time.perf_counter),
-                    _time(lambda: [_count(), _count()], time.perf_counter),
+                    timed(lambda: run_world(world, replicates, engine=two), time.perf_counter),
+                    timed(lambda: run_world(world, replicates), time.perf_counter),
+                    timed(lambda: pool(delayed(_count)() for _ in range(2)), time.perf_counter),
+                    timed(lambda: [_count(), _count()], time.perf_counter),
                 )
                 for _ in range(repeats)
             ),
@@ -334,11 +304,11 @@ def two_workers(replicates: int, repeats: int) -> Iterable[Line]:
         )
     )
     what = f"two processes, {replicates:,} replicates, every step (seconds by the clock)"
-    yield Line(what=what, ours=f"{both:.2f} s", other=f"{one:.2f} s", ratio=one / both, goal=1.8)
+    yield Line(what=what, ours=f"{shared:.2f} s", other=f"{alone:.2f} s", ratio=alone / shared, goal=1.8)
     yield Line(what="    the same of counting to 20 million, which shares nothing", ours=f"{counted:.2f} s",
                other=f"{counted_alone:.2f} s", ratio=counted_alone / counted)  # fmt: skip
     yield Line(
-        what="    their start and first two blocks", ours=f"{first:.2f} s", other="", ratio=first / both
+        what="    their start and first two blocks", ours=f"{first:.2f} s", other="", ratio=first / shared
     )
 
 
@@ -354,47 +324,17 @@ def memory() -> Iterable[Line]:
     """Ten times the replicates beside these."""
     few, many = _child(2_000), _child(20_000)
     what = "memory of noise, 10,000 rows: 20,000 replicates / 2,000"
-    yield Line(what=what, ours=_mib(many["grown"]), other=_mib(few["grown"]),
+    yield Line(what=what, ours=mib(many["grown"]), other=mib(few["grown"]),
                ratio=many["grown"] / few["grown"])  # fmt: skip
-    yield Line(what="    of which trials that are kept", ours=_mib(many["trials"]), other=_mib(few["trials"]),
+    yield Line(what="    of which trials that are kept", ours=mib(many["trials"]), other=mib(few["trials"]),
                ratio=many["trials"] / few["trials"])  # fmt: skip
-    yield Line(what="    the rest: blocks", ours=_mib(many["grown"] - many["trials"]),
-               other=_mib(few["grown"] - few["trials"]),
+    yield Line(what="    the rest: blocks", ours=mib(many["grown"] - many["trials"]),
+               other=mib(few["grown"] - few["trials"]),
                ratio=(many["grown"] - many["trials"]) / (few["grown"] - few["trials"]),
                goal=1.5, at_most=True)  # fmt: skip
 
 
-# -- measuring --------------------------------------------------------------------------------
-
-
-def _both(
-    ours: Callable[[], Any], our_count: int, other: Callable[[], Any], other_count: int, repeats: int
-) -> tuple[float, float]:
-    """Median seconds a replicate of two sides, run in turn so that a busy moment touches both."""
-    pairs = [(_time(ours), _time(other)) for _ in range(repeats)]
-    return (
-        statistics.median(one for one, _ in pairs) / our_count,
-        statistics.median(two for _, two in pairs) / other_count,
-    )
-
-
-def _median_time(work: Callable[[], Any], repeats: int) -> float:
-    return statistics.median(_time(work) for _ in range(repeats))
-
-
-def _time(work: Callable[[], Any], clock: Callable[[], float] = time.process_time) -> float:
-    """Seconds of work; of this process's own, where nothing else is said, whatever else the machine does."""
-    start = clock()
-    work()
-    return clock() - start
-
-
-def _ms(seconds: float) -> str:
-    return f"{seconds * 1e3:,.3f}"
-
-
-def _mib(size: float) -> str:
-    return f"{size / 2**20:,.1f} MiB"
+# -- memory ----------------------------------------------------------------------------------
 
 
 def _child(replicates: int) -> dict[str, float]:
@@ -408,27 +348,14 @@ def _child(replicates: int) -> dict[str, float]:
 
 def _memory_of(replicates: int) -> dict[str, float]:
     """Growth of this process by a rehearsal in noise, in bytes, and what its trials take."""
-    from dataclasses import fields
-
     world = noise_world(_stage(_selecting(gate=False), _frame(10_000)), SEED)
     run_world(world, 1)
-    before = _peak()
+    before = peak()
     trials = run_world(world, replicates)
     return {
-        "grown": float(_peak() - before),
+        "grown": float(peak() - before),
         "trials": float(sum(getattr(trials, one.name).nbytes for one in fields(trials))),
     }
-
-
-def _peak() -> int:
-    """Largest resident size of this process so far, in bytes."""
-    with contextlib.suppress(OSError):
-        # On Linux ru_maxrss starts from what the process that started this one has held.
-        for line in Path("/proc/self/status").read_text(encoding="ascii").splitlines():
-            if line.startswith("VmHWM:"):
-                return int(line.split()[1]) * 1024
-    # It counts kibibytes on Linux and bytes on macOS.
-    return resource.getrusage(resource.RUSAGE_SELF).ru_maxrss * (1 if sys.platform == "darwin" else 1024)
 
 
 if __name__ == "__main__":

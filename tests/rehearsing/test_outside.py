@@ -41,7 +41,7 @@ def test_screening_noise_as_freedman_did():
     means are of our own re-simulation of it with numpy and statsmodels alone, 4,000 runs, standard
     errors beside them; R² and counts of the first pass are exact. His one published run lies inside.
     """
-    runs, slots = 1000, names(50)
+    runs, slots = 800, names(50)
     plan = a_plan(
         slots,
         steps=[],
@@ -115,7 +115,7 @@ def test_a_plan_without_selection_errs_as_often_as_alpha(alpha):
 
 
 def test_selection_none_errs_as_often_as_alpha():
-    """The same through the selection step with method none, 20,000 replicates side by side.
+    """The same through the selection step with method none, 12,000 replicates side by side.
 
     All five t tests of an orthogonal design are nearly independent: the chance of any is close to
     1 - 0.95^5; the shared error variance moves it by less than 0.001 at 294 degrees of freedom.
@@ -124,12 +124,12 @@ def test_selection_none_errs_as_often_as_alpha():
     plan = a_plan(names(5), steps=["selection"], selection={"method": "none"}, **without_gate("a1"))
     orthogonal, _ = np.linalg.qr(np.column_stack([np.ones(300), frame[names(5)]]))
     frame[names(5)] = orthogonal[:, 1:]
-    trials = noise_world(a_stage(plan, frame), 14).trials(0, 20_000)
+    trials = noise_world(a_stage(plan, frame), 14).trials(0, 12_000)
     for place in range(5):
         near_share(trials.significant[:, place], 0.05)
     any_of_them = trials.significant.any(axis=1)
     truth = 1 - 0.95**5
-    assert abs(any_of_them.mean() - truth) <= 4 * sqrt(truth * (1 - truth) / 20_000) + 0.001
+    assert abs(any_of_them.mean() - truth) <= 4 * sqrt(truth * (1 - truth) / 12_000) + 0.001
 
 
 @pytest.mark.parametrize("alpha", [0.01, 0.05])
@@ -137,11 +137,11 @@ def test_the_f_test_of_the_whole_model_errs_as_often_as_alpha(alpha):
     """Its p is uniform in noise, so that the gate lets a share alpha of noise through."""
     frame = numbers(np.random.default_rng(15), 300, 8)
     stage = a_stage(a_plan(names(8), steps=["selection"], alpha=alpha), frame)
-    trials = noise_world(stage, 16).trials(0, 20_000)
+    trials = noise_world(stage, 16).trials(0, 12_000)
     near_share(trials.full_p <= alpha, alpha)
     # Behind the gate a significant whole may yet lose every part: adopted is a little rarer than alpha.
     figures = noise_figures(trials, stage.subjects, alpha)
-    assert figures.any_adopted.value <= alpha + 4 * sqrt(alpha * (1 - alpha) / 20_000)
+    assert figures.any_adopted.value <= alpha + 4 * sqrt(alpha * (1 - alpha) / 12_000)
     assert stats.kstest(trials.full_p, "uniform").pvalue > 1e-4
 
 
@@ -162,7 +162,7 @@ def test_an_effect_that_is_kept_leaves_the_others_their_level():
     )  # fmt: skip
     stage = a_stage(plan, frame)
     world = noise_world(stage, 18)
-    trials = world.trials(0, 20_000)
+    trials = world.trials(0, 12_000)
     for place in range(1, 4):
         near_share(trials.significant[:, place], 0.05)
     assert noise_figures(trials, stage.subjects, 0.05).held == ("a1",)
@@ -174,7 +174,9 @@ def test_an_effect_that_is_kept_leaves_the_others_their_level():
     about = design[:, 1] - others @ np.linalg.lstsq(others, design[:, 1], rcond=None)[0]
     delta = slope * np.linalg.norm(about) / np.std(world.shuffled)
     # Shuffled residuals are normal but nearly; at 195 degrees of freedom that moves power below 0.01.
-    assert abs(trials.significant[:, 0].mean() - _power_of_t(delta, 195, 0.05)) <= 0.01 + 4 * 0.0035
+    assert abs(trials.significant[:, 0].mean() - _power_of_t(delta, 195, 0.05)) <= 0.01 + 4 * sqrt(
+        0.25 / 12_000
+    )
 
 
 # -- power ----------------------------------------------------------------------------------------
@@ -200,7 +202,7 @@ def test_power_of_one_predictor_is_that_of_the_noncentral_t(slope, rows, alpha):
     expects = {"residual_sd": 1.3, "slopes": {"a1": slope}}
     plan = a_plan(["a1"], steps=["selection"], alpha=alpha, expects=expects)
     world = an_expected_world(plan, frame, 22)
-    trials = world.trials(0, 20_000)
+    trials = world.trials(0, 12_000)
     x = frame["a1"].to_numpy()
     power = _power_of_t(slope * np.linalg.norm(x - x.mean()) / 1.3, rows - 2, alpha)
     figures = expected_figures([(rows, trials)], world.stage.subjects, true_slopes(plan), alpha)
@@ -221,7 +223,7 @@ def test_power_of_a_block_and_of_the_model_are_those_of_the_noncentral_f():
         ["a1", room], steps=["selection"], selection={"method": "none"}, **without_gate("a1"),
         expects={"residual_sd": 1.0, "slopes": {"a1": 0.15, "room": effects}},
     )  # fmt: skip
-    trials = an_expected_world(plan, frame, 24).trials(0, 20_000)
+    trials = an_expected_world(plan, frame, 24).trials(0, 12_000)
     block = np.column_stack([frame["room"] == level for level in levels[1:]]).astype(float)
     other = np.column_stack([np.ones(90), frame["a1"]])
     shift = block @ list(effects.values())
@@ -247,7 +249,7 @@ def test_sample_sizes_of_cohen(alpha, k, f2, rows, printed):
         expects={"residual_sd": 1.0, "slopes": {"a1": sqrt(f2)}},
     )  # fmt: skip
     power = {}
-    for count in sorted({printed, rows - 1, rows}):
+    for count in (printed, rows):
         # Columns at right angles, of sum of squares N, make the noncentrality f² N exactly.
         columns = np.random.default_rng(count).normal(size=(count, k))
         orthogonal, _ = np.linalg.qr(np.column_stack([np.ones(count), columns]))
@@ -258,7 +260,6 @@ def test_sample_sizes_of_cohen(alpha, k, f2, rows, printed):
     error = 4 * sqrt(0.8 * 0.2 / 40_000)
     assert power[rows] >= 0.80 - error
     assert power[printed] < 0.80 - error
-    assert power[rows - 1] < power[rows]
 
 
 def test_a_weak_study_exaggerates_as_gelman_and_carlin_say():
@@ -281,7 +282,7 @@ def test_a_weak_study_exaggerates_as_gelman_and_carlin_say():
     expects = {"residual_sd": spread, "slopes": {"a1": 2.0}}
     plan = a_plan(["a1"], steps=["selection"], selection={"method": "none"}, expects=expects)
     world = an_expected_world(plan, frame, 27)
-    trials = world.trials(0, 20_000)
+    trials = world.trials(0, 12_000)
     figures = expected_figures([(rows, trials)], world.stage.subjects, true_slopes(plan), 0.05)
     one = figures.predictors["a1"]
     for found, truth in ((one.power, power), (one.wrong_sign, wrong), (one.exaggeration, exaggeration)):

@@ -74,7 +74,7 @@ def test_halves_find_noise_as_often_as_alpha_and_samples_with_replacement_more_o
     """
     rng = np.random.default_rng(32)
     plan = a_plan(names(3), steps=["selection"], alpha=alpha, **without_gate("a1"))
-    found = np.empty((150, 2))
+    found = np.empty((100, 2))
     for table in range(len(found)):
         frame = numbers(rng, 400, 3)
         frame["y"] += 0.5 * frame["a1"]
@@ -120,7 +120,7 @@ def test_spread_of_slopes_over_samples_is_that_of_standard_errors(spread):
 
 @pytest.mark.parametrize("selects", [False, True], ids=["fixed model", "backward elimination"])
 def test_r_squared_less_its_optimism_is_that_of_a_large_fresh_sample(selects):
-    """Over 80 tables, apparent R² less optimism against R² of the same answer on 200,000 fresh rows.
+    """Over 60 tables, apparent R² less optimism against R² of the same answer on 200,000 fresh rows.
 
     Harrell, Lee & Mark (1996), Statistics in Medicine 15:361-387; Efron & Gong (1983). What the true
     model happens to explain in a table beyond its share is the same in both and taken out, which leaves a
@@ -133,8 +133,8 @@ def test_r_squared_less_its_optimism_is_that_of_a_large_fresh_sample(selects):
     plan = a_plan(names(10), steps=["selection"], **changes, **without_gate("a1"))
     fresh = rng.normal(size=(200_000, 10))
     fresh_outcome = fresh @ slopes + rng.normal(size=200_000)
-    apparent, optimism, true, luck = np.empty((4, 80))
-    for table in range(80):
+    apparent, optimism, true, luck = np.empty((4, 60))
+    for table in range(60):
         frame = numbers(rng, 200, 10)
         errors = frame["y"].to_numpy().copy()
         frame["y"] += frame[names(10)] @ slopes
@@ -148,10 +148,10 @@ def test_r_squared_less_its_optimism_is_that_of_a_large_fresh_sample(selects):
         true[table] = 1 - np.mean((fresh_outcome - predicted) ** 2) / fresh_outcome.var()
         luck[table] = 1 - errors.var() / frame["y"].var() - slopes @ slopes / (1 + slopes @ slopes)
     really = apparent - true - luck
-    error = float((optimism - really).std(ddof=1)) / sqrt(80)
+    error = float((optimism - really).std(ddof=1)) / sqrt(60)
     left = (0.2 if selects else 11 / 200) * really.mean()
     assert abs(optimism.mean() - really.mean()) <= 4 * error + left
-    assert really.mean() > 10 * error
+    assert really.mean() > 6 * error
 
 
 # -- rows held out --------------------------------------------------------------------------------
@@ -200,7 +200,7 @@ def test_groups_left_out_one_at_a_time_by_hand():
 
 
 def test_errors_on_rows_held_out_are_as_large_as_theory_says():
-    """Over 120 tables: σ² (m + 1)(m - 2)/(m (m - p - 2)) for m normal rows and p slopes.
+    """Over 100 tables: σ² (m + 1)(m - 2)/(m (m - p - 2)) for m normal rows and p slopes.
 
     Stein (1960); Narula (1974), the exact mean squared error of prediction where predictors are normal.
     Ten folds of 60 rows leave m = 54. The mean model errs by Var(y) (1 + 1/m).
@@ -208,8 +208,8 @@ def test_errors_on_rows_held_out_are_as_large_as_theory_says():
     rng, rows, m, p = np.random.default_rng(43), 60, 54, 6
     slopes = np.array([0.5, -0.5, 0.25, 0.0, 0.0, 0.0])
     plan = a_plan(names(p), steps=[])
-    squared, mean_model = np.empty((2, 120))
-    for table in range(120):
+    squared, mean_model = np.empty((2, 100))
+    for table in range(100):
         frame = numbers(rng, rows, p)
         frame["y"] = frame[names(p)] @ slopes + 1.5 * frame["y"]
         world = hold_out_world(a_stage(plan, frame), table)
@@ -224,7 +224,7 @@ def test_errors_on_rows_held_out_are_as_large_as_theory_says():
     # The ratio of the means, by the delta method over tables.
     ratio = squared.mean() / mean_model.mean()
     residual = (squared - ratio * mean_model) / mean_model.mean()
-    near(1 - ratio, 1 - error / of_mean, residual.std(ddof=1) / sqrt(120))
+    near(1 - ratio, 1 - error / of_mean, residual.std(ddof=1) / sqrt(100))
 
 
 def test_repeats_of_folds_err_by_what_the_draw_of_folds_is_worth():

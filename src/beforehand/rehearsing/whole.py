@@ -38,7 +38,11 @@ from beforehand.rehearsing.world import World
 from beforehand.table import Table
 
 # Replicates that are computed together where they are computed side by side.
-WIDE_BLOCK = 250
+WIDE_BLOCK = 500
+
+# Outcomes or weights of a block have so many cells at most, however many rows there are.
+BLOCK_CELLS = 5_000_000
+FEWEST = 5
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -153,7 +157,7 @@ class _Machine:
     saved: Saved | None
     progress: Progress | None
 
-    def run(self, world: World, replicates: int, *, wide: bool = False) -> Trials:
+    def run(self, world: World, replicates: int, rows: int, *, wide: bool = False) -> Trials:
         """Every replicate of a world."""
         engine = self.asked.engine
         if wide and engine.kind == "local":
@@ -161,8 +165,13 @@ class _Machine:
             engine = replace(engine, workers=1)
         return run_world(
             world, replicates, engine=engine, progress=self.progress, saved=self.saved,
-            block=WIDE_BLOCK if wide else BLOCK,
+            block=block_of(rows, wide=wide),
         )  # fmt: skip
+
+
+def block_of(rows: int, *, wide: bool) -> int:
+    """Replicates of a block: the same for a table however they are computed."""
+    return max(FEWEST, min(WIDE_BLOCK if wide else BLOCK, BLOCK_CELLS // max(rows, 1)))
 
 
 def _wide(stage: Stage) -> bool:
@@ -175,7 +184,7 @@ def _noise(
 ) -> NoiseFigures | None:
     if stage is None or "noise" not in asked.scenarios:
         return None
-    trials = machine.run(noise_world(stage, asked.seed), asked.replicates, wide=_wide(stage))
+    trials = machine.run(noise_world(stage, asked.seed), asked.replicates, stage.n_rows, wide=_wide(stage))
     return noise_figures(trials, stage.subjects, plan.alpha, observed)
 
 
@@ -189,11 +198,11 @@ def _expected(
     if stage is not None and table is not None:
         subjects = stage.subjects
         world = expected_world(plan, table, stage, asked.seed)
-        by_rows.append((stage.n_rows, machine.run(world, asked.replicates, wide=_wide(stage))))
+        by_rows.append((stage.n_rows, machine.run(world, asked.replicates, stage.n_rows, wide=_wide(stage))))
     else:
         subjects = declared_subjects(plan)
     for drawn in drawn_worlds(plan, table, asked.rows, None if stage is None else subjects, asked.seed):
-        by_rows.append((drawn.rows, machine.run(drawn, asked.replicates)))
+        by_rows.append((drawn.rows, machine.run(drawn, asked.replicates, drawn.rows)))
     return expected_figures(by_rows, subjects, true_slopes(plan), plan.alpha)
 
 
@@ -205,7 +214,9 @@ def _resample(
     seen = () if observed is None else observed.rulings
     half = SampleWorld(name=HALF_SAMPLES, stage=stage, seen=(), seed=asked.seed)
     boot = SampleWorld(name=BOOTSTRAP, stage=stage, seen=seen, seed=asked.seed)
-    parts = [machine.run(world, asked.replicates, wide=world.side_by_side) for world in (half, boot)]
+    parts = [
+        machine.run(world, asked.replicates, stage.n_rows, wide=world.side_by_side) for world in (half, boot)
+    ]
     rows = half.table(0).n_rows
     return resample_figures(parts[0], parts[1], stage.subjects, observed, plan.alpha, half_rows=rows)
 
@@ -214,7 +225,7 @@ def _hold_out(stage: Stage | None, asked: Asked, machine: _Machine) -> HoldOutFi
     if stage is None or "hold_out" not in asked.scenarios:
         return None
     world = hold_out_world(stage, asked.seed)
-    trials = machine.run(world, world.repeats(asked.replicates) * world.folds)
+    trials = machine.run(world, world.repeats(asked.replicates) * world.folds, stage.n_rows)
     return hold_out_figures(held_out_of(world, trials))
 
 

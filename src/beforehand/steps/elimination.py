@@ -98,6 +98,8 @@ class Elimination:
             if keeping.parts(name)
         ]
         self._theory = keeping.theory
+        self._limits: dict[tuple[float, int], FloatArray] = {}
+        self._rows = 0
 
     def run(
         self, inverse: FloatArray, slopes: FloatArray, rss: FloatArray, tss: FloatArray, n: int
@@ -115,6 +117,7 @@ class Elimination:
         n : int
             Rows of each.
         """
+        self._rows = n
         count, k = slopes.shape
         m = len(self._blocks)
         present = np.ones((count, m), dtype=bool)
@@ -235,16 +238,25 @@ class Elimination:
 
     def _reaches(self, statistic: FloatArray, df: NDArray[np.int64], alpha: float) -> Flags:
         """Whether the p of each predictor is at or below alpha, by the statistic that just reaches it."""
-        degrees, back = np.unique(df, return_inverse=True)
-        limits = np.empty((len(degrees), len(self._sizes)))
+        limits = self._limits.get((alpha, self._rows))
+        if limits is None:
+            # No model has more degrees of freedom than that of the mean.
+            limits = self._limits[alpha, self._rows] = self._limits_of(self._rows - 1, alpha)
+        with np.errstate(invalid="ignore"):
+            return np.asarray(statistic >= limits[df])
+
+    def _limits_of(self, most: int, alpha: float) -> FloatArray:
+        """The statistic that just reaches alpha, for each number of degrees of freedom near the most."""
+        columns = int(self._sizes.sum())
+        degrees = np.arange(max(1, most - columns - 1), most + 1)
+        limits = np.full((most + 1, len(self._sizes)), np.nan)
         for size in np.unique(self._sizes).tolist():
             if size == 1:
                 limit = np.asarray(stdtrit(degrees, 1.0 - alpha / 2.0)) ** 2
             else:
                 limit = np.asarray(fdtri(size, degrees, 1.0 - alpha))
-            limits[:, self._sizes == size] = limit[:, None]
-        with np.errstate(invalid="ignore"):
-            return np.asarray(statistic >= limits[back])
+            limits[np.ix_(degrees, self._sizes == size)] = limit[:, None]
+        return limits
 
     def _held(self, present: Flags, statistic: FloatArray, df: NDArray[np.int64]) -> Flags:
         """What a keep rule or a product prevents from leaving."""

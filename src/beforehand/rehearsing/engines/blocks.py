@@ -3,9 +3,14 @@
 from __future__ import annotations
 
 import threading
+from functools import cache
+from typing import TYPE_CHECKING
 
 from beforehand.rehearsing.trials import Trials
 from beforehand.rehearsing.world import World
+
+if TYPE_CHECKING:
+    from threadpoolctl import ThreadpoolController
 
 Block = tuple[int, int]
 Finished = tuple[Block, Trials]
@@ -27,7 +32,16 @@ def block_trials(world: World, block: Block) -> Trials:
 
     Libraries for matrices add up in another order on several threads, which would change last digits.
     """
-    from threadpoolctl import threadpool_limits
-
-    with _ONE_AT_A_TIME, threadpool_limits(limits=1):
+    with _ONE_AT_A_TIME, _libraries().limit(limits=1):
         return world.trials(*block)
+
+
+@cache
+def _libraries() -> ThreadpoolController:
+    """The libraries of this process that have threads; looking for them takes longer than a small block."""
+    # What multiplies and factors matrices is loaded first, so that it is found.
+    import scipy.linalg
+    from threadpoolctl import ThreadpoolController
+
+    assert scipy.linalg
+    return ThreadpoolController()
