@@ -168,7 +168,7 @@ def numbers_agree(one, other) -> bool:
             continue
         again = other.evidence.get(name)
         if isinstance(value, float) and not isinstance(value, bool):
-            if again is None or abs(value - again) > 1e-6 * (abs(value) + 1e-6):
+            if again is None or abs(value - again) > 1e-6 * abs(value) + 1e-7:
                 return False
         elif value != again:
             return False

@@ -30,6 +30,9 @@ SMALLEST_REST = 1e-8
 # A column that varies by less than this share of its mean is constant, or needs more than doubles.
 ROUNDING = 1e-7
 
+# So much of a limit on either side of it is left to exact arithmetic.
+KNIFE_EDGE = 1e-8
+
 # How many factored designs are kept at hand.
 AT_HAND = 64
 PLACES_AT_HAND = 4096
@@ -39,6 +42,22 @@ class NotQuick(NumericalError):  # noqa: N818 - named by what is so, as its neig
     """Doubles do not suffice here; the exact moments do."""
 
     code = "not_quick"
+
+
+def require_clear(values: Sequence[float | None], limit: float | None) -> None:
+    """Make sure that no value is so near to a limit that the digits of a double decide on which side.
+
+    Raises
+    ------
+    NotQuick
+        One is.
+    """
+    if limit is None:
+        return
+    near = KNIFE_EDGE * abs(limit)
+    low, high = limit - near, limit + near
+    if any(value is not None and low <= value <= high for value in values):
+        raise NotQuick("a value lies on the edge of a limit")
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -9,7 +9,7 @@ import numpy as np
 from scipy.special import fdtrc, stdtr
 
 from beforehand.fit.columns import FloatArray
-from beforehand.fit.doubles import Columns, NotQuick, Solved
+from beforehand.fit.doubles import SMALLEST_REST, Columns, NotQuick, Solved
 from beforehand.fit.influence import NOTHING_LEFT, Influence, WithoutEach, measures_of
 
 if TYPE_CHECKING:
@@ -74,6 +74,8 @@ def without_each(
     in_errors = np.abs(shift) / (root * np.sqrt(fit.s2))
     column = in_errors.argmax(axis=1)
     lost = residual * residual / rest
+    if bool((fit.rss - lost <= SMALLEST_REST * fit.rss).any()):
+        raise NotQuick("without one row next to nothing is left to explain")
     n = design.n
     total = fit.tss - about * about * (n / (n - 1))
     with np.errstate(divide="ignore", invalid="ignore"):

@@ -13,6 +13,7 @@ import numpy as np
 
 from beforehand.fit import assumptions, exponents, ladder, quick_checks, quick_influence
 from beforehand.fit.columns import FloatArray
+from beforehand.fit.doubles import require_clear
 from beforehand.fit.results import Check
 from beforehand.steps.bench import Checked, Comparison, Fitted, Linked, Measures, Positions
 from beforehand.steps.best import best_subset
@@ -42,6 +43,7 @@ class QuickBench:
         self._ground = ground
         self._plan = ground.plan
         self.numbers = Numbers(ground, outcome, cross)
+        self._limits = ground.plan.collinearity.examine_when
         self._fits: dict[Model, Fitted] = {}
 
     # -- what a step asks for ---------------------------------------------------------------
@@ -61,6 +63,8 @@ class QuickBench:
             fit = self.numbers.fit(model)
             if model.errors != "classical":
                 fit = self.numbers.robust(model, fit, model.errors)
+            alpha = self._plan.alpha
+            require_clear([fit.f_p, *(test.p for test in fit.tests.values())], alpha)
             known = self._fits[model] = Fitted(NO_ID, model, fit)
         return known
 
@@ -155,6 +159,7 @@ class QuickBench:
         own = design.gram[np.ix_(places, places)]
         length = np.sqrt(own.diagonal())
         rows = (own / length / length[:, None]).tolist()
+        require_clear([abs(r) for row in rows for r in row], self._limits.correlation_above)
         return tuple(
             (one, other, rows[at][beyond])
             for at, (one, _) in enumerate(single)
@@ -165,10 +170,12 @@ class QuickBench:
         """VIF of each predictor; for a block the generalized VIF to the power 1/df."""
         design = self._ground.columns.design(model.keys, model.rows.gone)
         single = (design.inverse.diagonal() * design.gram.diagonal()).tolist()
-        return tuple(
+        found = tuple(
             (name, single[places[0]] if len(places) == 1 else _inflation(design.inverse, design.gram, places))
             for name, places in places_of(model).items()
         )
+        require_clear([value for _, value in found], self._limits.vif_above)
+        return found
 
     def inflation_without(self, model: Model, name: str) -> Mapping[str, float]:
         """The same for one predictor, after each other predictor in turn has been left out."""
@@ -249,6 +256,8 @@ class QuickBench:
             about=self.numbers.response(model.outcome).in_use(fit.design.gone)[rows],
             blocks=places_of(model) if wanted else {},
         )
+        require_clear(found.change_coefficient.tolist(), when.coefficient)
+        require_clear(np.abs(found.change_r_squared).tolist(), when.r_squared)
         positions = measures.positions[rows]
         if wanted:
             return compared(fitted, found, positions, alpha)
@@ -263,6 +272,7 @@ class QuickBench:
 
 
 def _checked(check: Check, alpha: float) -> Checked:
+    require_clear([check.p], alpha)
     return Checked(NO_ID, check, alpha, NO_ID)
 
 
