@@ -13,7 +13,7 @@ import numpy as np
 
 from beforehand.fit import assumptions, exponents, ladder, quick_checks, quick_influence
 from beforehand.fit.columns import FloatArray
-from beforehand.fit.doubles import require_clear
+from beforehand.fit.doubles import KNIFE_EDGE, NotQuick, require_clear
 from beforehand.fit.results import Check
 from beforehand.steps.bench import Checked, Comparison, Fitted, Linked, Measures, Positions
 from beforehand.steps.best import best_subset
@@ -23,6 +23,9 @@ from beforehand.steps.quick_numbers import Numbers, places_of
 from beforehand.steps.state import Model, Rows, State, Transform, column_name
 
 NO_ID = ""
+
+# Measures of two copies of a row differ by less than this, if at all.
+TIE = 1e-13
 
 
 class QuickBench:
@@ -210,6 +213,7 @@ class QuickBench:
         """Each flagged row left out alone, in the order given."""
         sole = measures.sole[flagged]
         others = flagged[~sole]
+        _require_order(measures.cooks_distance[others])
         made = iter(self._compared(fitted, measures, others, alpha)) if len(others) else iter(())
         return tuple(
             self._sole(fitted.model, int(measures.positions[row])) if alone else next(made)
@@ -269,6 +273,17 @@ class QuickBench:
                 found.column.tolist(), strict=True,
             )
         ]  # fmt: skip
+
+
+def _require_order(falling: FloatArray) -> None:
+    """Make sure that the order of rows hangs on more than the last digits of a double.
+
+    Rows that are equal, as copies are, keep the order of the table on either bench.
+    """
+    apart = np.abs(np.diff(falling))
+    scale = np.abs(falling[:-1])
+    if bool(((apart > TIE * scale) & (apart <= KNIFE_EDGE * scale)).any()):
+        raise NotQuick("rows are flagged in an order that doubles cannot tell")
 
 
 def _checked(check: Check, alpha: float) -> Checked:
