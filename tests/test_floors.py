@@ -28,9 +28,12 @@ FLOORS = (
     ("runs",),
     ("rehearsing",),
     ("handing",),
+    ("predicting",),
+    ("picturing",),
     ("exchange", "rehearsals"),
     ("api",),
     ("screen",),
+    ("reporting",),
     ("cli", "__main__", "__init__"),
 )
 FLOOR_OF = {name: number for number, names in enumerate(FLOORS) for name in names}

@@ -19,6 +19,7 @@ from beforehand.version import __version__
 if TYPE_CHECKING:
     from beforehand.api import (
         Engine,
+        Predictions,
         Rehearsal,
         Replay,
         Run,
@@ -29,6 +30,7 @@ if TYPE_CHECKING:
         handover,
         lock_text,
         plan_from_mapping,
+        predict,
         read_lock,
         read_plan,
         read_rehearsal,
@@ -54,10 +56,12 @@ if TYPE_CHECKING:
     )
     from beforehand.lock import Answer, Lock
     from beforehand.plan import Plan
+    from beforehand.reporting.writing import report
 
 _HOMES = {
     "beforehand.api": (
         "Engine",
+        "Predictions",
         "Rehearsal",
         "Replay",
         "Run",
@@ -68,6 +72,7 @@ _HOMES = {
         "handover",
         "lock_text",
         "plan_from_mapping",
+        "predict",
         "read_lock",
         "read_plan",
         "read_rehearsal",
@@ -93,6 +98,7 @@ _HOMES = {
     ),
     "beforehand.lock": ("Answer", "Lock"),
     "beforehand.plan": ("Plan",),
+    "beforehand.reporting.writing": ("report",),
 }
 _HOME_OF = {name: home for home, names in _HOMES.items() for name in names}
 
@@ -108,6 +114,7 @@ __all__ = [
     "NumericalError",
     "Plan",
     "PlanError",
+    "Predictions",
     "Rehearsal",
     "Replay",
     "Run",
@@ -120,6 +127,7 @@ __all__ = [
     "handover",
     "lock_text",
     "plan_from_mapping",
+    "predict",
     "read_lock",
     "read_plan",
     "read_rehearsal",
@@ -127,6 +135,7 @@ __all__ = [
     "refresh",
     "rehearse",
     "replay",
+    "report",
     "run",
     "seal",
     "trace",

@@ -16,6 +16,7 @@ from beforehand.lock.difference import Replay, replay_of
 from beforehand.lock.trace import Story, trace
 from beforehand.lock.writing import lock_text
 from beforehand.plan import Plan, decisions_digest, plan_from_mapping, read_plan
+from beforehand.predicting import Predictions, prediction_in, predictions, wanted_by
 from beforehand.record import learned_from, learned_in
 from beforehand.refreshing import Refreshed, refreshed, unkept
 from beforehand.rehearsals import Rehearsal, is_rehearsal, rehearse, rehearse_again
@@ -37,6 +38,7 @@ from beforehand.sealing import Seal, Standing, seal_plan
 from beforehand.sealing.chain import refused
 from beforehand.steps.learned import NOTHING, Learned
 from beforehand.table import read_table
+from beforehand.table.fresh import fresh_from_frame, read_fresh
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -178,6 +180,52 @@ def replay(
     return replay_of(old, new)
 
 
+def predict(lock: Lock | str | os.PathLike[str], data: str | os.PathLike[str] | pd.DataFrame) -> Predictions:
+    """Predict new cases by the answer of a lock.
+
+    Parameters
+    ----------
+    lock : Lock or path
+    data : path or pandas.DataFrame
+        The new cases, under the contract of the lock's plan; they need no outcome.
+
+    Returns
+    -------
+    Predictions
+        In the order of the new cases. A case that the fit has not seen the like of is no error: it
+        carries the reasons.
+
+    Raises
+    ------
+    LockError
+        The lock has nothing that could predict: its run stopped, or an earlier version wrote it.
+    DataError
+        With every fault of the new table.
+
+    Examples
+    --------
+    >>> import pandas as pd
+    >>> table = pd.DataFrame({"x": [1.0, 2.0, 3.0, 4.0, 5.0, 6.0], "y": [1.1, 2.0, 2.7, 4.2, 5.1, 5.8]})
+    >>> plan = plan_from_mapping({
+    ...     "language": 1, "title": "Six readings", "question": "Does y go with x?",
+    ...     "data": {"file": "readings.csv"}, "outcome": {"column": "y"},
+    ...     "predictors": [{"column": "x"}],
+    ... })
+    >>> case, = predict(run(plan, table).lock, pd.DataFrame({"x": [8.0]})).cases
+    >>> round(case.prediction, 3), case.outside[0]
+    (7.893, 'x 8 is above the largest seen, 6')
+    """
+    name = lock.plan.file if isinstance(lock, Lock) else os.fspath(lock)
+    kept = lock if isinstance(lock, Lock) else read_lock(lock)
+    plan = plan_from_mapping(kept.plan.written, kept.plan.file)
+    wanted = wanted_by(plan, prediction_in(kept, name))
+    if isinstance(data, str | os.PathLike):
+        read = read_fresh(plan, wanted, data, columns=kept.data.columns)
+    else:
+        read = fresh_from_frame(plan, wanted, data)
+    return predictions(kept, plan, read, name=name)
+
+
 def compare(
     old: str | os.PathLike[str],
     new: str | os.PathLike[str],
@@ -312,6 +360,7 @@ __all__ = [
     "Engine",
     "Lock",
     "Plan",
+    "Predictions",
     "Rehearsal",
     "Replay",
     "Run",
@@ -323,6 +372,7 @@ __all__ = [
     "lock_path",
     "lock_text",
     "plan_from_mapping",
+    "predict",
     "read_lock",
     "read_plan",
     "read_rehearsal",

@@ -22,6 +22,8 @@ COMMANDS = [
     "run",
     "replay",
     "trace",
+    "report",
+    "predict",
     "compare",
     "refresh",
     "handover",
@@ -60,6 +62,8 @@ def test_the_help_of_the_program_is_this_text(command: Command) -> None:
         "  run       Run a plan, write the lockfile, print the answer.\n"
         "  replay    Compute a record again and say what differs.\n"
         "  trace     Tell the story of one predictor or one row.\n"
+        "  report    Write the report of a lockfile, the key finding first.\n"
+        "  predict   Predict new cases by the answer in a lockfile.\n"
         "  compare   Say what changed between two plans or two lockfiles.\n"
         "  refresh   Run a plan on refreshed data and say whether the answer holds.\n"
         "  handover  Pack a plan and its record, to be checked by someone else.\n"

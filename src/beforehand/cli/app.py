@@ -13,10 +13,12 @@ from beforehand.cli.draft import draft
 from beforehand.cli.guard import TRACEBACK_VARIABLE, Guarded, Plain
 from beforehand.cli.guide import guide
 from beforehand.cli.handover import handover
+from beforehand.cli.predict import predict
 from beforehand.cli.receive import receive
 from beforehand.cli.refresh import refresh
 from beforehand.cli.rehearse import rehearse
 from beforehand.cli.replay import replay
+from beforehand.cli.report import report
 from beforehand.cli.run import run
 from beforehand.cli.schema import schema
 from beforehand.cli.seal import seal
@@ -35,7 +37,8 @@ app = typer.Typer(
 )
 
 COMMANDS = (
-    draft, check, rehearse, seal, run, replay, trace, compare, refresh, handover, receive, schema, guide,
+    draft, check, rehearse, seal, run, replay, trace, report, predict, compare, refresh, handover, receive,
+    schema, guide,
 )  # fmt: skip
 
 for command in COMMANDS:

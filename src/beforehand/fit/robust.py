@@ -71,9 +71,42 @@ def robust_fit(
     NotEstimable
         For hc2 and hc3 with a row of leverage 1, fewer than two clusters, no order of the rows.
     """
-    pulls = _pulls(source, tableau)
+    covariance, df = spread_of(
+        _pulls(source, tableau), fit, values, errors=errors, groups=groups, order=order, lags=lags
+    )
+    roots = _roots(tableau)
+    return fit_with(fit, covariance * np.outer(roots, roots), blocks, df, errors)
+
+
+def spread_of(
+    rows: FloatArray,
+    fit: Fit,
+    values: RowValues,
+    *,
+    errors: str,
+    groups: NDArray[np.float64] | None = None,
+    order: NDArray[np.float64] | None = None,
+    lags: int | None = None,
+) -> tuple[FloatArray, int]:
+    """Covariance of linear forms of the coefficients, and the degrees of freedom of its tests.
+
+    Parameters
+    ----------
+    rows : FloatArray, shape (n, p)
+        What each row of the fit, per unit of its residual, does to each of the forms.
+    fit, values, errors, groups, order, lags
+        As of `robust_fit`.
+
+    Returns
+    -------
+    tuple of FloatArray, shape (p, p), and int
+
+    Raises
+    ------
+    NotEstimable
+        As of `robust_fit`.
+    """
     residual = values.residual
-    factor, df = 1.0, fit.df_residual
     if errors == "cluster":
         if groups is None:
             raise NotEstimable("no column names the clusters")
@@ -82,24 +115,16 @@ def robust_fit(
         if count < 2:
             raise NotEstimable("there is one cluster only")
         scores = np.column_stack(
-            [
-                sums_by_group(pulls[:, j] * residual, codes.astype(np.intp), count)
-                for j in range(pulls.shape[1])
-            ]
+            [sums_by_group(rows[:, j] * residual, codes.astype(np.intp), count) for j in range(rows.shape[1])]
         )
-        factor = count / (count - 1) * (fit.n - 1) / fit.df_residual
-        df = count - 1
-        covariance = _gram(scores)
-    elif errors == "autocorrelation":
+        return _gram(scores) * (count / (count - 1) * (fit.n - 1) / fit.df_residual), count - 1
+    if errors == "autocorrelation":
         if order is None or lags is None:
             raise NotEstimable("no column gives the order of the rows")
-        scores = (pulls * residual[:, None])[np.argsort(order, kind="stable")]
-        covariance = _with_lags(scores, lags)
-    else:
-        weight, factor = _weights(errors, fit, values)
-        covariance = _gram(pulls * (residual * weight)[:, None])
-    roots = _roots(tableau)
-    return fit_with(fit, covariance * factor * np.outer(roots, roots), blocks, df, errors)
+        scores = (rows * residual[:, None])[np.argsort(order, kind="stable")]
+        return _with_lags(scores, lags), fit.df_residual
+    weight, factor = _weights(errors, fit, values)
+    return _gram(rows * (residual * weight)[:, None]) * factor, fit.df_residual
 
 
 def _weights(errors: str, fit: Fit, values: RowValues) -> tuple[FloatArray, float]:

@@ -50,7 +50,18 @@ BLOCKS = (
     "amendments",
 )
 
-_CLOSING = ("lock", "seal", "rehearse", "compare", "handover", "rules", "numbers", "cautions", "bad-input")
+_CLOSING = (
+    "lock",
+    "predict",
+    "seal",
+    "rehearse",
+    "compare",
+    "handover",
+    "rules",
+    "numbers",
+    "cautions",
+    "bad-input",
+)
 
 # Keys of the plan that are too small for a page of their own.
 _ELSEWHERE: Mapping[str, str] = {"title": "language", "question": "language", "written_by": "language"}

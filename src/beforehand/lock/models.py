@@ -13,6 +13,8 @@ from pydantic import Field
 
 from beforehand.lock.answer import Answer
 from beforehand.lock.checks import Checks
+from beforehand.lock.pictures import PictureData
+from beforehand.lock.prediction import Prediction
 from beforehand.lock.record import Count, Digest, Figure, Name, PlainData, Record
 from beforehand.lock.trail import FitRecord, LedgerStage, PredictorFate, RowRemoved, RulingRecord
 
@@ -117,7 +119,9 @@ class Lock(Record):
     A lock made in memory carries the digest ``""``; writing fills it in.
     """
 
-    left_out: ClassVar[frozenset[str]] = frozenset({"scrambled", "learned", "sealed_plan", "sealed_answer"})
+    left_out: ClassVar[frozenset[str]] = frozenset(
+        {"scrambled", "learned", "sealed_plan", "sealed_answer", "prediction", "pictures"}
+    )
 
     lock: Literal[1] = Field(description="Version of the lock's language.")
     scrambled: Scrambled | None = Field(
@@ -141,7 +145,13 @@ class Lock(Record):
     rulings: tuple[RulingRecord, ...] = Field(description="Every ruling, in order.")
     fits: tuple[FitRecord, ...] = Field(description="Every fit, in the order first asked for.")
     checks: Checks = Field(description="Everything looked at beside the fits.")
+    prediction: Prediction | None = Field(
+        default=None, description="What a prediction for a new case needs; left out where none can be made."
+    )
     alternatives: Mapping[Name, Alternative] = Field(description="Declared alternatives, each a whole run.")
+    pictures: PictureData | None = Field(
+        default=None, description="What pictures are drawn from; left out of locks of earlier versions."
+    )
     environment: Environment = Field(description="What the run was made with; outside the digest.")
     digest: Annotated[str, Field(pattern=r"^(sha256:[0-9a-f]{64})?$")] = Field(
         default="", description="Digest of all lines above the environment."

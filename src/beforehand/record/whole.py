@@ -36,6 +36,8 @@ from beforehand.lock import (
 from beforehand.plan import Plan, decisions_digest, whole_digest, written_out
 from beforehand.record.alternatives import differences_from
 from beforehand.record.checks import checks_of
+from beforehand.record.pictures import pictures_of
+from beforehand.record.prediction import prediction_of
 from beforehand.running import Trail
 from beforehand.steps.keeping import product_name
 from beforehand.steps.learned import NOTHING, Learned
@@ -93,10 +95,12 @@ def lock_of(
         sealed_answer=None if sealed is None else _answer(sealed, labels),
         sealed_plan=None if sealed is None else _plan(sealed.plan, file),
         **_body(trail, labels),
+        prediction=prediction_of(trail),
         alternatives={
             name: _alternative(other, plan.alternatives[name], trail, answer, labels)
             for name, other in alternatives.items()
         },
+        pictures=pictures_of(trail),
         environment=environment(),
         digest="",
     )

@@ -90,16 +90,22 @@ def _head(lock: Lock, width: int) -> Section:
     return Section(title=first, lines=(*rest, *wrapped(lock.plan.question, width)))
 
 
-def _status(lock: Lock, plan: Planned, width: int) -> Section:
-    """The status in one word, and what it means."""
+def status_sentence(lock: Lock, plan: Planned) -> tuple[str, str]:
+    """The status in a few words, and what it means."""
     word, meaning = {
         "adopted": ("Adopted: the model stands", _adopted),
         "mean_only": ("Mean only: no predictor stands", _mean_only),
         "inconclusive": ("Inconclusive: the model as a whole is not significant", _inconclusive),
         "stopped": ("Stopped: there is no answer", _stopped),
     }[lock.status]
+    return word, meaning(lock, plan)
+
+
+def _status(lock: Lock, plan: Planned, width: int) -> Section:
+    """The status, and what it means."""
+    word, meaning = status_sentence(lock, plan)
     tone: Tone = "good" if lock.status == "adopted" else "careful"
-    return Section(title=word, lines=wrapped(meaning(lock, plan), width), tone=tone, close=True)
+    return Section(title=word, lines=wrapped(meaning, width), tone=tone, close=True)
 
 
 def _adopted(lock: Lock, plan: Planned) -> str:

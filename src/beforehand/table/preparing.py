@@ -61,7 +61,7 @@ def prepared(plan: Plan, read: AsRead) -> Table:
         With every fault: labels, levels, ranges, eligibility that leaves no row.
     """
     name_row = row_namer(read, plan.data.row_label)
-    faults = list(_label_faults(plan, read, name_row))
+    faults = list(label_faults(plan, read, name_row))
     if faults:
         raise DataError(faults)
     order = canonical_order(plan, read)
@@ -112,7 +112,7 @@ def _is_used(plan: Plan, name: str) -> bool:
     return name in (cluster, order, groups) or any(line.column == name for line in plan.eligibility)
 
 
-def _label_faults(plan: Plan, read: AsRead, name_row: Callable[[int], str]) -> list[Fault]:
+def label_faults(plan: Plan, read: AsRead, name_row: Callable[[int], str]) -> list[Fault]:
     """Labels that are missing or stand twice."""
     column = plan.data.row_label
     if column is None:
@@ -211,7 +211,7 @@ def _eligible(plan: Plan, read: AsRead) -> tuple[Mask, list[Stage]]:
     eligible = np.ones(read.n_rows, dtype=bool)
     stages = [Stage(name="read", rows=read.n_rows)]
     for line in plan.eligibility:
-        eligible &= _meets(line, read.columns[line.column])
+        eligible &= meets(line, read.columns[line.column])
         name, value = line.condition
         shown = ", ".join(map(str, value)) if isinstance(value, tuple) else str(value)
         stages.append(
@@ -224,7 +224,7 @@ def _eligible(plan: Plan, read: AsRead) -> tuple[Mask, list[Stage]]:
     return eligible, stages
 
 
-def _meets(line: Eligibility, values: NDArray[Any]) -> Mask:
+def meets(line: Eligibility, values: NDArray[Any]) -> Mask:
     """Rows that meet one condition; a missing cell meets none."""
     name, wanted = line.condition
     if values.dtype == object:

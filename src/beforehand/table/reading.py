@@ -167,12 +167,12 @@ def table_from_frame(plan: Plan, frame: pd.DataFrame) -> Table:
     for column, want in wanted.items():
         series = frame.iloc[:, names.index(column)]
         if want.kind == "text":
-            typed[column] = texts_of(_as_cells(series, plan), plan.data)
+            typed[column] = texts_of(frame_cells(series, plan), plan.data)
     namer = row_namer(AsRead(file=IN_MEMORY, columns=typed, n_rows=len(frame)), plan.data.row_label)
     for column, want in wanted.items():
         if want.kind == "number":
             series = frame.iloc[:, names.index(column)]
-            typed[column], found = _numbers(series, plan, column, namer)
+            typed[column], found = frame_numbers(series, plan, column, namer)
             faults.extend(found)
     if faults:
         raise DataError(faults)
@@ -180,12 +180,14 @@ def table_from_frame(plan: Plan, frame: pd.DataFrame) -> Table:
     return prepared(plan, AsRead(file=IN_MEMORY, columns=columns, n_rows=len(frame)))
 
 
-def _numbers(series: Any, plan: Plan, column: str, namer: Any) -> tuple[NDArray[np.float64], list[Fault]]:
+def frame_numbers(
+    series: Any, plan: Plan, column: str, namer: Any
+) -> tuple[NDArray[np.float64], list[Fault]]:
     """A column of a frame as numbers."""
     from pandas.api.types import is_bool_dtype, is_numeric_dtype
 
     if not (is_numeric_dtype(series.dtype) or is_bool_dtype(series.dtype)) or series.dtype.kind == "c":
-        return numbers_of(_as_cells(series, plan), plan.data, IN_MEMORY, column, namer, ())
+        return numbers_of(frame_cells(series, plan), plan.data, IN_MEMORY, column, namer, ())
     values = series.to_numpy(dtype=np.float64, na_value=np.nan)
     infinite = np.flatnonzero(np.isinf(values))
     if len(infinite):
@@ -199,7 +201,7 @@ def _numbers(series: Any, plan: Plan, column: str, namer: Any) -> tuple[NDArray[
     return values, []
 
 
-def _as_cells(series: Any, plan: Plan) -> list[str]:
+def frame_cells(series: Any, plan: Plan) -> list[str]:
     """A column of a frame as the cells of a file."""
     missing = plan.data.missing_codes[0] if plan.data.missing_codes else ""
     return [missing if _absent(value) else _cell(value) for value in series.tolist()]
