@@ -312,3 +312,27 @@ def test_a_run_without_an_answer_is_reported_as_one(tmp_path):
     assert "Stopped" in document.sections[0].blocks[0].sentences[0].text
     assert all(section.blocks for section in document.sections)
     assert words.TITLES["answer"] not in [section.title for section in document.sections]
+
+
+@pytest.mark.parametrize(("form", "package"), [("html", "matplotlib"), ("docx", "python-docx")])
+def test_without_the_library_that_a_form_needs_one_line_says_what_to_install(
+    tmp_path, monkeypatch, form, package
+):
+    """And nothing is written; Markdown needs neither."""
+    import importlib.util
+
+    path = tmp_path / "jobs.lock.yaml"
+    shutil.copy(LOCKS["jobs"], path)
+    gone = {"matplotlib": "matplotlib", "python-docx": "docx"}[package]
+    found = importlib.util.find_spec
+
+    def spec(name, package=None):
+        return None if name == gone else found(name, package)
+
+    for module in ("beforehand.picturing.drawing", "beforehand.reporting.word"):
+        monkeypatch.setattr(f"{module}.find_spec", spec)
+    done = CliRunner().invoke(app, ["report", str(path), "--to", form])
+    assert done.exit_code == 2
+    assert f"needs the package {package}" in done.stderr or f"need the package {package}" in done.stderr
+    assert [one.name for one in tmp_path.iterdir()] == ["jobs.lock.yaml"]
+    assert CliRunner().invoke(app, ["report", str(path), "--to", "md"]).exit_code == 0

@@ -52,6 +52,7 @@ BLOCKS = (
 
 _CLOSING = (
     "lock",
+    "report",
     "predict",
     "seal",
     "rehearse",

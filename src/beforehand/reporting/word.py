@@ -6,8 +6,10 @@ import io
 import zipfile
 from collections.abc import Mapping, Sequence
 from datetime import UTC, datetime
+from importlib.util import find_spec
 from typing import Any
 
+from beforehand.faults import Fault, InputError
 from beforehand.reporting import words
 from beforehand.reporting.document import (
     Block,
@@ -50,6 +52,9 @@ def word_of(document: Document, pictures: Mapping[str, Sequence[Drawn]]) -> byte
     pictures : mapping of name to drawn pictures
         As PNG.
     """
+    if find_spec("docx") is None:
+        what = "a Word document needs the package python-docx: pip install 'beforehand[report]'"
+        raise InputError([Fault(file="report", line=None, place="", what=what, code="no_docx")])
     import docx
     from docx.shared import Mm, Pt
 
