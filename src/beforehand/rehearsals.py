@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import os
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -20,6 +20,7 @@ from beforehand.rehearsing.reading import read_rehearsal
 from beforehand.rehearsing.real import observed_of
 from beforehand.rehearsing.scramble import marked, scrambled_table
 from beforehand.rehearsing.stage import Stage
+from beforehand.rehearsing.text import with_digest
 from beforehand.rehearsing.whole import Asked, choice, rehearsed
 from beforehand.running import Progress, run_steps
 from beforehand.runs import UNSEALED_STANDING, lock_path, looked_run, reader, run_plan
@@ -110,6 +111,9 @@ def rehearse(
     asked_seed = plan.rehearsal.seed if seed is None else seed
     chosen = scenarios or plan.rehearsal.scenarios
     table = _table(plan, data, chosen)
+    if table is not None and isinstance(data, str | os.PathLike):
+        # What was read is told by its own name, not by that of the table for which the plan was written.
+        table = replace(table, file=Path(data).name)
     lock = _lock_of(plan, table)
     written = "scenarios" in plan.rehearsal.model_fields_set
     worlds, left_out = choice(
@@ -143,6 +147,41 @@ def rehearse(
         told = ScrambledRun(lock=name, status=dry.status, seed=asked_seed)
     record = rehearsed(plan, table, asked, observed=observed, scrambled=told, progress=progress)
     return Rehearsal(record=record, scrambled=dry, looked=looked)
+
+
+def with_earlier(new: RehearsalRecord, path: Path) -> tuple[RehearsalRecord, tuple[str, ...]]:
+    """A record with the scenarios of an earlier one that it does not have itself.
+
+    Parameters
+    ----------
+    new : RehearsalRecord
+    path : Path
+        Where the earlier one may stand.
+
+    Returns
+    -------
+    tuple of RehearsalRecord and names
+        The second names scenarios that are lost, as the earlier ones were of another plan, table, seed or
+        number of replicates.
+    """
+    try:
+        old = read_rehearsal(path)
+    except LockError:
+        return new, ()
+    names = [
+        name
+        for name in type(old.scenarios).model_fields
+        if getattr(old.scenarios, name) is not None and getattr(new.scenarios, name) is None
+    ]
+    same = (old.plan.decisions, old.data, old.seed, old.replicates) == (
+        new.plan.decisions, new.data, new.seed, new.replicates,
+    )  # fmt: skip
+    if not same:
+        return new, tuple(names)
+    made = new.scenarios.model_copy(update={name: getattr(old.scenarios, name) for name in names})
+    why = tuple(said for said in new.not_rehearsed if said.partition(":")[0] not in names)
+    lock = new.lock or old.lock
+    return with_digest(new.model_copy(update={"scenarios": made, "not_rehearsed": why, "lock": lock})), ()
 
 
 def rehearse_again(

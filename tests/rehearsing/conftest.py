@@ -53,6 +53,8 @@ def made(subjects: Subjects) -> MakeTrials:
         if "adopted" in given:
             # What was adopted stands in the model.
             given.setdefault("present", given["adopted"])
+        if "r_squared" in given:
+            given.setdefault("here", given["r_squared"])
         arrays = {
             name: np.asarray(value).astype(getattr(blank, name).dtype, copy=True)
             for name, value in given.items()
@@ -113,6 +115,7 @@ def observed() -> Observed:
         full_errors=np.array([0.6, 0.2, 0.4, 0.9, nan]),
         r_squared=0.76,
         adjusted_r_squared=0.75,
+        apparent=0.76,
         model_p=1e-9,
         rulings=(
             SeenRuling(id="R004", step="selection", subject="wind", ground="p"),

@@ -291,3 +291,46 @@ def test_the_bundle_takes_the_rehearsal_and_its_schema_along(place, typed):
     assert found.code == 0, found.err
     with zipfile.ZipFile(place / "ferries.zip") as packed:
         assert {"ferries.rehearsal.yaml", "rehearsal.schema.json"} <= set(packed.namelist())
+
+
+def test_scenarios_rehearsed_before_stay_in_the_record(place, typed):
+    """One after the other, of the same plan, table, seed and replicates; else what goes is named."""
+    assert typed("rehearse ferries.plan.yaml --replicates 100 --scenario noise").code == 0
+    assert typed("rehearse ferries.plan.yaml --replicates 100 --scenario expected").code == 0
+    made = read_rehearsal(place / "ferries.rehearsal.yaml")
+    assert made.scenarios.noise is not None
+    assert made.scenarios.expected is not None
+    assert typed("replay ferries.rehearsal.yaml").code == 0
+    found = typed("rehearse ferries.plan.yaml --replicates 120 --scenario scrambled")
+    assert "noise, expected of the earlier record went" in found.err
+
+
+def test_what_was_finished_is_not_thrown_away(place, typed, monkeypatch):
+    """A part file of this very rehearsal is gone on with, or taken away by its owner."""
+    blocks = engines.local.block_trials
+    done = 0
+
+    def some(world, block):
+        nonlocal done
+        if done == 2:
+            raise KeyboardInterrupt
+        done += 1
+        return blocks(world, block)
+
+    with monkeypatch.context() as patched:
+        patched.setattr(engines.local, "block_trials", some)
+        assert typed("rehearse ferries.plan.yaml --replicates 200 --scenario noise --workers 1").code == 130
+    before = (place / "ferries.rehearsal.part").read_bytes()
+    found = typed("rehearse ferries.plan.yaml --replicates 200 --scenario expected")
+    assert found.code == 2
+    assert "--resume goes on with it" in found.err
+    assert (place / "ferries.rehearsal.part").read_bytes() == before
+
+
+def test_the_rehearsal_of_another_table_is_not_quoted(place, typed):
+    """A record of other rows says nothing of this run."""
+    table = pd.read_csv(place / "ferries.csv")
+    table.iloc[:60].to_csv(place / "other.csv", index=False)
+    assert typed("rehearse ferries.plan.yaml --replicates 100 --scenario noise --data other.csv").code == 0
+    assert read_rehearsal(place / "ferries.rehearsal.yaml").data.file == "other.csv"
+    assert "As rehearsed" not in typed("run ferries.plan.yaml").out

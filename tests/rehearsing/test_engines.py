@@ -49,6 +49,10 @@ def same(one: Trials, other: Trials) -> bool:
 @pytest.fixture
 def toys(monkeypatch: pytest.MonkeyPatch) -> ModuleType:
     """The module of worlds, which processes that are begun from here can import too."""
+    from joblib.externals.loky import get_reusable_executor
+
+    # Processes that another test began do not know this folder.
+    get_reusable_executor().shutdown(wait=True)
     monkeypatch.syspath_prepend(str(HERE))
     monkeypatch.setenv("PYTHONPATH", os.pathsep.join(sys.path))
     return importlib.import_module("toy_worlds")

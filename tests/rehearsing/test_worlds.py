@@ -6,6 +6,7 @@ import numpy as np
 import pandas as pd
 import pytest
 
+from beforehand.faults import DataError
 from beforehand.plan import plan_from_mapping
 from beforehand.rehearsing.hold_out import HoldOutWorld, held_out_of, hold_out_world
 from beforehand.rehearsing.noise import noise_world
@@ -248,3 +249,33 @@ def test_what_a_rule_keeps_is_not_found():
     pair = [stage.subjects.names.index(name) for name in ("humidity", "weaver")]
     assert trials.present[:, pair].any(axis=1).all()
     assert trials.adopted[:, pair].any(axis=1).mean() < 0.2
+
+
+def test_noise_without_an_intercept_has_no_mean_to_be_picked_up():
+    """Shuffled outcomes of mean 400 would go with any predictor of one sign."""
+    frame = looms()
+    frame["breaks"] += 400.0
+    made = plan(
+        intercept=False, steps=["selection"], predictors=[{"column": "tension"}, {"column": "humidity"}]
+    )
+    trials = noise_world(stage_of(made, frame), 1).trials(0, 40)
+    assert trials.adopted.any(axis=1).mean() < 0.25
+
+
+def test_parts_of_a_product_that_is_always_kept_are_held():
+    """They may not leave either, so they are no finds."""
+    keep = [{"predictor": ["tension", "humidity"], "rule": "always", "because": "they act together"}]
+    stage = stage_of(plan(products=[["tension", "humidity"]], keep=keep), looms())
+    held = dict(zip(stage.subjects.names, stage.subjects.held, strict=True))
+    assert held == {"tension": True, "humidity": True, "weaver": False, "tension × humidity": True}
+
+
+def test_groups_are_counted_and_not_named_where_labels_are_hashed():
+    """A group may be a person; and one group alone cannot be left out."""
+    data = {"file": "looms.csv", "labels_in_lock": "hashed"}
+    world = hold_out_world(stage_of(plan(rehearsal={"leave_out": "hall"}, data=data), looms()), 3)
+    assert world.groups == ("1", "2", "3", "4", "5", "6")
+    frame = looms()
+    frame["hall"] = "h1"
+    with pytest.raises(DataError, match="one group"):
+        hold_out_world(stage_of(plan(rehearsal={"leave_out": "hall"}), frame), 3)

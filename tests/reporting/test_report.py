@@ -336,3 +336,13 @@ def test_without_the_library_that_a_form_needs_one_line_says_what_to_install(
     assert f"needs the package {package}" in done.stderr or f"need the package {package}" in done.stderr
     assert [one.name for one in tmp_path.iterdir()] == ["jobs.lock.yaml"]
     assert CliRunner().invoke(app, ["report", str(path), "--to", "md"]).exit_code == 0
+
+
+def test_numbers_in_markdown_are_numbers():
+    """A decimal is no list; only what would begin one is."""
+    from beforehand.reporting.markdown import plain
+
+    assert plain("36.6") == "36.6"
+    assert plain("-8.7 to 3.1") == "-8.7 to 3.1"
+    assert plain("- a") == "\\- a"
+    assert plain("1. a") == "1\\. a"

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from enum import StrEnum
 from pathlib import Path
 from typing import Annotated
@@ -139,7 +139,7 @@ def rehearse(
     """
     from beforehand import api
     from beforehand.names import beside
-    from beforehand.rehearsals import SCRAMBLED_SUFFIX
+    from beforehand.rehearsals import SCRAMBLED_SUFFIX, with_earlier
     from beforehand.rehearsing.engines import Interrupted
     from beforehand.rehearsing.reading import RECORD_SUFFIX
 
@@ -166,22 +166,23 @@ def rehearse(
             )
             raise typer.Exit(130) from None
         told("writing the record")
-        api.write_rehearsal(made.record, record)
+        whole, lost = with_earlier(made.record, record)
+        api.write_rehearsal(whole, record)
         if made.scrambled is not None:
             api.write_lock(made.scrambled, dry)
-    for line in _notes(made.record.replicates, made.looked):
+    for line in _notes(whole.replicates, made.looked, lost):
         terminal.note(line)
     if as_json:
         from beforehand.cli.machine import json_text
 
-        terminal.document(json_text(made.record))
+        terminal.document(json_text(whole))
         return
     from beforehand.screen.rehearsal import rehearsal_text
 
-    terminal.say(rehearsal_text(made.record, str(record), width=terminal.width(), colour=terminal.colour()))
+    terminal.say(rehearsal_text(whole, str(record), width=terminal.width(), colour=terminal.colour()))
 
 
-def _notes(replicates: int, looked: bool) -> list[str]:
+def _notes(replicates: int, looked: bool, lost: Sequence[str]) -> list[str]:
     """What a reader of any form of the result should know."""
     notes: list[str] = []
     if replicates < FEW:
@@ -189,6 +190,10 @@ def _notes(replicates: int, looked: bool) -> list[str]:
         notes.append(
             f"warning: {replicates} replicates are few: a share near 5 % has a standard error of {error:.1f} "
             "percentage points"
+        )
+    if lost:
+        notes.append(
+            f"{', '.join(lost)} of the earlier record went: another plan, table, seed or number of replicates"
         )
     if looked:
         notes.append(

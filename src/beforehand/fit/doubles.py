@@ -30,6 +30,10 @@ SMALLEST_REST = 1e-8
 # A column that varies by less than this share of its mean is constant, or needs more than doubles.
 ROUNDING = 1e-7
 
+# What rows that leave must leave of the outcome's sum of squares: it is taken from the whole by
+# subtraction, and as many digits are lost as it is smaller.
+SMALLEST_LEFT = 1e-5
+
 # So much of a limit on either side of it is left to exact arithmetic.
 KNIFE_EDGE = 1e-8
 
@@ -322,7 +326,10 @@ class Response:
         if not len(gone):
             return self.total
         own = self.about[gone]
-        return self.total - float(own @ own) - float(own.sum()) ** 2 / (len(self.about) - len(gone))
+        left = self.total - float(own @ own) - float(own.sum()) ** 2 / (len(self.about) - len(gone))
+        if left < SMALLEST_LEFT * self.total:
+            raise NotQuick("the rows that are gone were nearly all of the outcome's variation")
+        return left
 
     def in_use(self, gone: Places) -> FloatArray:
         """Values about their mean in the rows in use."""

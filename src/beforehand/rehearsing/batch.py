@@ -255,6 +255,7 @@ class Batch:
         with_outcome = slopes @ cross
         own = np.einsum("bi,ij,bj->b", slopes, self.gram, slopes)
         error = total - 2.0 * with_outcome + own + len(about) * level * level
+        trials.here[:] = trials.r_squared
         trials.elsewhere[:] = 1.0 - error / total
         with np.errstate(divide="ignore", invalid="ignore"):
             trials.slope[:] = np.where(own > 1e-20 * total, with_outcome / own, np.nan)

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from beforehand.faults import BeforehandError
+from beforehand.faults import BeforehandError, DataError, Fault
 from beforehand.fit.columns import FloatArray
 from beforehand.rehearsing.observed import HeldOut
 from beforehand.rehearsing.predicting import predictions
@@ -124,6 +124,12 @@ def hold_out_world(stage: Stage, seed: int) -> HoldOutWorld:
     found = table.columns[column]
     names, codes = np.unique(found.values, return_inverse=True)
     groups = tuple(_group_name(value, found.levels) for value in names.tolist())
+    if len(groups) < 2:
+        what = f"names {column!r}, which has one group in this table: there is nothing to leave out"
+        raise DataError([Fault(file=table.file, line=None, place="leave_out", what=what, code="groups")])
+    if plan.data.labels_in_lock == "hashed":
+        # Groups may be rows, or people: they are counted, not named.
+        groups = tuple(str(number) for number in range(1, len(groups) + 1))
     return HoldOutWorld(
         stage=stage, folds=len(groups), groups=groups, codes=np.asarray(codes, dtype=np.int64), seed=seed
     )

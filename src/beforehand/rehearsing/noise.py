@@ -55,7 +55,9 @@ def noise_world(stage: Stage, seed: int) -> NoiseWorld:
     model = Designer(setting.plan, setting.source).model(setting.state)
     keys = [key for term in model.terms if term.name in held for key in term.keys]
     if not keys or not len(outcome):
-        return NoiseWorld(stage=stage, kept=np.zeros_like(outcome), shuffled=outcome, seed=seed)
+        # Without an intercept the mean of the outcome is no noise: any predictor would pick it up.
+        level = 0.0 if setting.plan.intercept or not len(outcome) else float(outcome.mean())
+        return NoiseWorld(stage=stage, kept=np.zeros_like(outcome), shuffled=outcome - level, seed=seed)
     columns = [setting.source.read(key, 0, len(outcome)) for key in keys]
     if setting.plan.intercept:
         columns.append(np.ones_like(outcome))
@@ -65,4 +67,6 @@ def noise_world(stage: Stage, seed: int) -> NoiseWorld:
     # Fitted values are the same for any of the solutions where the columns depend on each other.
     solution = np.linalg.lstsq(design, outcome, rcond=None)[0]
     kept = design @ solution
-    return NoiseWorld(stage=stage, kept=kept, shuffled=outcome - kept, seed=seed)
+    rest = outcome - kept
+    level = 0.0 if setting.plan.intercept else float(rest.mean())
+    return NoiseWorld(stage=stage, kept=kept, shuffled=rest - level, seed=seed)

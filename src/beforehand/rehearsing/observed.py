@@ -36,6 +36,9 @@ class Observed:
     full_estimates, full_errors : FloatArray, shape (c,)
         The same in the full model, with which selection began.
     r_squared, adjusted_r_squared : float
+    apparent : float
+        R² of the answer's predictions over all rows of the base, in units of the outcome: what that of a
+        replicate is compared with.
     model_p : float
         NaN where the answer is the mean.
     rulings : tuple of SeenRuling
@@ -53,6 +56,7 @@ class Observed:
     full_errors: FloatArray
     r_squared: float
     adjusted_r_squared: float
+    apparent: float
     model_p: float
     rulings: tuple[SeenRuling, ...]
 

@@ -42,7 +42,7 @@ def read_rehearsal(path: str | os.PathLike[str]) -> RehearsalRecord:
 
 
 def rehearsal_beside(lock: Lock, plan: Path) -> RehearsalRecord | None:
-    """The rehearsal of a lock's plan that stands beside it; None where there is none that fits.
+    """The rehearsal of a lock's plan and table that stands beside it; None where there is none that fits.
 
     Parameters
     ----------
@@ -58,7 +58,8 @@ def rehearsal_beside(lock: Lock, plan: Path) -> RehearsalRecord | None:
     except LockError:
         # A rehearsal that cannot be read is a matter of its own; the run is none the worse for it.
         return None
-    return found if found.plan.decisions == lock.plan.decisions else None
+    same_table = found.data is None or found.data.fingerprint == lock.data.fingerprint
+    return found if same_table and found.plan.decisions == lock.plan.decisions else None
 
 
 def rehearsal_from_bytes(data: bytes, name: str) -> RehearsalRecord:

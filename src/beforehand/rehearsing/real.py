@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from beforehand.rehearsing.observed import Observed, SeenRuling
+from beforehand.rehearsing.predicting import agreement, predictions
 from beforehand.rehearsing.stage import Collector
 from beforehand.rehearsing.trial import Ended
 from beforehand.rehearsing.trials import Subjects
@@ -54,6 +55,7 @@ def observed_of(trail: Trail, subjects: Subjects, lock: str) -> Observed:
         full_errors=whole.errors[0],
         r_squared=float(made.r_squared[0]),
         adjusted_r_squared=float(made.adjusted_r_squared[0]),
+        apparent=_apparent(trail),
         model_p=float(made.model_p[0]) if trail.status == "adopted" else float(np.nan),
         rulings=tuple(
             SeenRuling(id=ruling.id, step=ruling.step, subject=ruling.subject, ground=ruling.ground)
@@ -63,6 +65,14 @@ def observed_of(trail: Trail, subjects: Subjects, lock: str) -> Observed:
             and not ruling.ground.startswith(_OF_ORDER)
         ),
     )
+
+
+def _apparent(trail: Trail) -> float:
+    """R² of the answer's predictions over the base."""
+    if trail.status != "adopted" or trail.final is None:
+        return 0.0
+    predicted = predictions(_ended(trail, trail.state, trail.status), trail.source, trail.source)
+    return agreement(trail.source.raw(trail.plan.outcome.column), predicted)[0]
 
 
 def _ended(trail: Trail, state: State, status: str) -> Ended:

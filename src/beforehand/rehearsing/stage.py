@@ -142,10 +142,13 @@ def subjects_of(plan: Plan, source: TableSource, state: State) -> Subjects:
     # A predictor that missing data took out has no column on these rows.
     model = Designer(plan, source).model(replace(state, transforms={}))
     keeping = Keeping(plan)
+    always = {name for name in names if keeping.always(name)}
+    # What an always-kept product is made of cannot leave either.
+    always |= {part for name in always for part in keeping.parts(name)}
     keys = [(key, names.index(term.name)) for term in model.terms for key in term.keys]
     return Subjects(
         names=names,
-        held=tuple(keeping.always(name) for name in names),
+        held=tuple(name in always for name in names),
         columns=tuple(column_name(key) for key, _ in keys),
         owners=tuple(place for _, place in keys),
     )
@@ -208,8 +211,11 @@ class Collector:
         if ended.status != "adopted":
             own = float(seen.raw(self._plan.outcome.column).mean())
             predicted = np.full(len(outcome), own)
+            self.trials.here[place] = 0.0
         else:
             predicted = predictions(ended, seen, elsewhere.source)
+            drawn = seen.raw(self._plan.outcome.column)
+            self.trials.here[place] = agreement(drawn, predictions(ended, seen, seen))[0]
         found = agreement(outcome, predicted)
         self.trials.elsewhere[place], self.trials.slope[place] = found
 

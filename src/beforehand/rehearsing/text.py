@@ -7,13 +7,11 @@ import os
 from typing import Any
 
 from beforehand.lock.files import write_whole
-from beforehand.lock.schema import DIALECT
+from beforehand.lock.schema import record_schema
 from beforehand.lock.writing import covered_text, digest_of, record_text
 from beforehand.rehearsing.models import RehearsalRecord
 
 SCHEMA_ID = "rehearsal.schema.json"
-
-_FILE_DIGEST = "^sha256:[0-9a-f]{64}$"
 
 
 def rehearsal_record_text(record: RehearsalRecord) -> str:
@@ -38,22 +36,8 @@ def write_rehearsal(record: RehearsalRecord, path: str | os.PathLike[str]) -> No
 
 
 def rehearsal_schema() -> dict[str, Any]:
-    """Describe the file of a rehearsal.
-
-    Returns
-    -------
-    dict
-        A JSON Schema (2020-12) of the file's content. A record on file always has its digest.
-    """
-    made = RehearsalRecord.model_json_schema()
-    made["properties"]["digest"] = {
-        "description": made["properties"]["digest"]["description"],
-        "pattern": _FILE_DIGEST,
-        "title": "Digest",
-        "type": "string",
-    }
-    made["required"] = [*made["required"], "digest"]
-    return {"$schema": DIALECT, "$id": SCHEMA_ID, **made}
+    """Describe the file of a rehearsal."""
+    return record_schema(RehearsalRecord, SCHEMA_ID)
 
 
 def rehearsal_schema_text() -> str:

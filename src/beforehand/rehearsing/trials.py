@@ -67,9 +67,10 @@ class Trials:
         p of the F test of the model with which selection began.
     rows : array of int64, shape (B,)
         Rows of the final fit.
-    elsewhere, slope : FloatArray, shape (B,)
-        R² of the final model on the rows that the replicate was drawn from, and the slope of the
-        outcome there on its predictions; NaN where the scenario does not ask for them.
+    here, elsewhere, slope : FloatArray, shape (B,)
+        R² of the answer's predictions, in units of the outcome, on the rows of the replicate and on the
+        rows that it was drawn from, and the slope of the outcome there on its predictions; NaN where the
+        scenario does not ask for them.
     same_rulings : array of bool, shape (B, m)
         Whether each of the m rulings of the real run fell in the replicate as it fell there.
     squared, squared_mean_model : FloatArray, shape (B,)
@@ -92,6 +93,7 @@ class Trials:
     model_p: FloatArray
     full_p: FloatArray
     rows: NDArray[np.int64]
+    here: FloatArray
     elsewhere: FloatArray
     slope: FloatArray
     same_rulings: Flags
@@ -136,7 +138,8 @@ def empty(count: int, subjects: Subjects, rulings: int = 0) -> Trials:
         estimates=nothing(count, c), errors=nothing(count, c), intercept=nothing(count),
         df=nothing(count), r_squared=nothing(count), adjusted_r_squared=nothing(count),
         model_p=nothing(count), full_p=nothing(count), rows=np.zeros(count, dtype=np.int64),
-        elsewhere=nothing(count), slope=nothing(count), same_rulings=none(count, rulings),
+        here=nothing(count), elsewhere=nothing(count), slope=nothing(count),
+        same_rulings=none(count, rulings),
         squared=nothing(count), squared_mean_model=nothing(count),
         predicted=np.zeros(count, dtype=np.int64), not_predicted=np.zeros(count, dtype=np.int64),
     )  # fmt: skip

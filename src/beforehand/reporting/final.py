@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 from beforehand.fit.robustness import robustness_of
 from beforehand.lock import AnswerTerm, FitRecord
 from beforehand.reporting import words
@@ -126,7 +128,8 @@ def honest_section(context: Context) -> Section | None:
         rows.append(("R²", figure(boot.r_squared.apparent), number_text(boot.r_squared.corrected)))
     held = made.scenarios.hold_out
     if held is not None and held.r_squared is not None:
-        rows.append(("R² on rows held out", figure(answer.r_squared), number_text(held.r_squared)))
+        apparent = boot.r_squared.apparent
+        rows.append(("R² on rows held out", figure(apparent), number_text(held.r_squared)))
     for term in answer.terms:
         own = boot.intervals.get(term.term)
         ends = None if own is None else own.bias_corrected or own.percentile
@@ -182,14 +185,18 @@ def _unseen(context: Context) -> tuple[Said, ...]:
     answer, plan = context.lock.answer, context.plan
     if answer is None or answer.f_df is None or answer.fit is None:
         return ()
-    classical = _classical(context)
+    lost = {one.predictor: one.semipartial_r_squared for one in answer.predictors}
     df = answer.rows - len(answer.terms)
     single = [term for term in answer.terms if term.predictor and term.t is not None and term.level is None]
     focal = [term for term in single if plan.roles.get(term.predictor or "") == "focal"] or single
     made = []
     for term in focal[:8]:
-        t = classical.get(term.term)
-        if term.p is None or term.p > plan.alpha or t is None or df < 2:
+        share = lost.get(term.predictor or "")
+        if term.p is None or term.p > plan.alpha or share is None or df < 2 or not answer.r_squared:
+            continue
+        # t by classical errors, whatever errors the table has: from what R² loses without the predictor.
+        t = math.sqrt(df * share / (1.0 - answer.r_squared)) if answer.r_squared < 1.0 else math.inf
+        if not math.isfinite(t):
             continue
         found = robustness_of(t, df, alpha=plan.alpha)
         said = words.robust_to_unseen(
@@ -197,19 +204,6 @@ def _unseen(context: Context) -> tuple[Said, ...]:
         )
         made.append(Said(said, (answer.fit,)))
     return tuple(made)
-
-
-def _classical(context: Context) -> dict[str, float]:
-    """Value of t of each term by classical errors, on which the robustness value rests."""
-    answer = context.lock.answer
-    assert answer is not None
-    names = {term.term for term in answer.terms}
-    final = next((fit for fit in context.lock.fits if fit.id == answer.fit), None)
-    for fit in context.lock.fits:
-        same = final is not None and fit.rows == final.rows and {term.term for term in fit.terms} == names
-        if same and fit.errors == "classical":
-            return {term.term: term.t for term in fit.terms if term.t is not None}
-    return {}
 
 
 def alternatives_section(context: Context) -> Section | None:

@@ -34,6 +34,8 @@ def key_section(context: Context) -> Section | None:
         explained = Said(
             words.explained(answer.r_squared, answer.rows, len(answer.predictors)), _fits(answer)
         )
+        if all(term.predictor is not None for term in answer.terms):
+            explained = Said(f"{explained.text} {words.FROM_ZERO}", _fits(answer))
     blocks: list[Block | None] = [paragraph(Said(f"{word}. {meaning}", _fits(answer)), explained)]
     if lock.scrambled is not None:
         blocks.insert(0, paragraph(Said(lock.scrambled.says)))
@@ -70,7 +72,13 @@ def _methods(context: Context) -> Paragraph:
     lock, plan, written = context.lock, context.plan, context.written
     steps = [str(step) for step in written.get("steps") or ()]
     rows = lock.answer.rows if lock.answer is not None else (lock.ledger[-1].rows if lock.ledger else 0)
-    theory = [str(rule["predictor"]) for rule in written.get("keep") or () if rule.get("predictor")]
+    theory = {
+        ruling.subject: ruling.id
+        for ruling in lock.rulings
+        if ruling.ground in ("kept_always", "kept_below_bound", "kept_last_of_group")
+        and ruling.subject in lock.predictors
+        and lock.predictors[ruling.subject].verdict != "removed"
+    }
     selection = written.get("selection") or {}
     gone = [row for row in lock.rows_removed if row.step == "influence"]
     complete = next((stage.rows for stage in lock.ledger if stage.stage == "complete"), rows)
@@ -92,7 +100,7 @@ def _methods(context: Context) -> Paragraph:
         said.append(Said(words.rows_removed(len(gone), share), tuple(row.ruling for row in gone)))
     if "selection" in steps:
         said.append(Said(words.selected_by(str(selection.get("method", "backward")), plan.alpha)))
-    said.append(Said(words.kept(theory)))
+    said.append(Said(words.kept(list(theory)), tuple(theory.values())))
     if lock.answer is not None:
         said.append(Said(words.errors_used(lock.answer.errors, plan.level), _fits(lock.answer)))
     said.append(Said(words.many_tests(plan.multiplicity)))

@@ -23,7 +23,8 @@ from beforehand.reporting.drawn import Drawn
 SIGN = "<!-- Written by beforehand. -->"
 
 _SPECIAL = re.compile(r"([\\`*_{}\[\]<>#|~$])")
-_STARTS = re.compile(r"^(\s*)([-+>=]|\d+[.)])", re.MULTILINE)
+# What would begin a list, a quotation or a heading at the start of a line.
+_STARTS = re.compile(r"^(\d*)([-+>=.)])(?=\s|$)")
 
 
 def markdown_of(document: Document, pictures: Mapping[str, Sequence[Drawn]]) -> str:

@@ -28,6 +28,7 @@ TITLES = {
     "record": "The record",
     "references": "Methods and where they come from",
 }
+FROM_ZERO = "Variation is measured from 0, as the fit has no intercept."
 APPENDIX = "Details"
 CAUTIONS = "Cautions"
 CONTENTS = "Contents"

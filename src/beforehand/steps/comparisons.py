@@ -7,9 +7,23 @@ from collections.abc import Mapping, Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from beforehand.fit.influence import WithoutEach
-from beforehand.steps.bench import Comparison, Fitted, Positions
+from beforehand.fit.influence import Influence, WithoutEach
+from beforehand.steps.bench import Comparison, Fitted, Measures, Positions
 from beforehand.steps.state import column_name
+
+
+def measured(found: Influence, positions: Positions) -> Measures:
+    """Influence measures as a step reads them, with the rows' positions in the base."""
+    return Measures(
+        positions=positions,
+        leverage=found.leverage,
+        studentized=found.external,
+        cooks_distance=found.cooks_distance,
+        dffits=found.dffits,
+        largest_dfbetas=found.largest_dfbetas,
+        covariance_ratio=found.covariance_ratio,
+        sole=found.sole,
+    )
 
 
 def compared(

@@ -17,7 +17,7 @@ from beforehand.fit.doubles import KNIFE_EDGE, NotQuick, require_clear
 from beforehand.fit.results import Check
 from beforehand.steps.bench import Checked, Comparison, Fitted, Linked, Measures, Positions
 from beforehand.steps.best import best_subset
-from beforehand.steps.comparisons import compared
+from beforehand.steps.comparisons import compared, measured
 from beforehand.steps.ground import Ground
 from beforehand.steps.quick_numbers import Numbers, places_of
 from beforehand.steps.state import Model, Rows, State, Transform, column_name
@@ -196,16 +196,7 @@ class QuickBench:
         found = quick_influence.influence(
             self._ground.columns, self.numbers.of(model), self.numbers.residual(model), dfbetas=dfbetas
         )
-        return Measures(
-            positions=model.rows.kept,
-            leverage=found.leverage,
-            studentized=found.external,
-            cooks_distance=found.cooks_distance,
-            dffits=found.dffits,
-            largest_dfbetas=found.largest_dfbetas,
-            covariance_ratio=found.covariance_ratio,
-            sole=found.sole,
-        )
+        return measured(found, model.rows.kept)
 
     def without_each(
         self, fitted: Fitted, measures: Measures, flagged: Positions, alpha: float

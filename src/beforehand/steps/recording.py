@@ -22,7 +22,7 @@ from beforehand.fit.tableau import Tableau
 from beforehand.plan import Plan
 from beforehand.steps.bench import Checked, Comparison, Fitted, Linked, Measures, Positions
 from beforehand.steps.best import best_subset
-from beforehand.steps.comparisons import compared
+from beforehand.steps.comparisons import compared, measured
 from beforehand.steps.designing import Designer
 from beforehand.steps.learned import NOTHING, Learned
 from beforehand.steps.linking import linked_of
@@ -226,16 +226,7 @@ class RecordingBench:
         found = influence.influence(
             self._workings.source(model.rows), self.tableau(model), self.values(model), dfbetas=dfbetas
         )
-        return Measures(
-            positions=model.rows.kept,
-            leverage=found.leverage,
-            studentized=found.external,
-            cooks_distance=found.cooks_distance,
-            dffits=found.dffits,
-            largest_dfbetas=found.largest_dfbetas,
-            covariance_ratio=found.covariance_ratio,
-            sole=found.sole,
-        )
+        return measured(found, model.rows.kept)
 
     def without_each(
         self, fitted: Fitted, measures: Measures, flagged: Positions, alpha: float

@@ -82,6 +82,16 @@ class Saved:
         content = self._content()
         if content is not None:
             self._require_ours(content, head, resume=resume)
+            if (
+                not resume
+                and content.startswith(head)
+                and any(True for _ in _read_blocks(content, len(head)))
+            ):
+                what = (
+                    "holds what an interrupted rehearsal of this plan finished: --resume goes on with it; "
+                    "take the file away to begin anew"
+                )
+                raise InputError([self._fault(what, "unfinished")])
         end = 0
         if content is not None and resume:
             # Less than the first line is there when an interrupt cut that off.

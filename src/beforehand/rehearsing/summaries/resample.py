@@ -144,10 +144,15 @@ def _bootstrap(boot: Trials, subjects: Subjects, observed: Observed | None, alph
     return Bootstrap(
         inclusion=shares(boot.present, subjects.names, range(len(subjects.names))),
         relative_conditional_bias={
-            subjects.columns[c]: relative_bias(boot.estimates[:, c], full[c]) for c in columns
+            subjects.columns[c]: relative_bias(boot.estimates[:, c], full[c])
+            if _comparable(subjects, c, observed)
+            else None
+            for c in columns
         },
         rmsd_ratio={
             subjects.columns[c]: root_mean_square(_with_zeros(boot, subjects, c) - full[c], errors[c])
+            if _comparable(subjects, c, observed)
+            else None
             for c in columns
         },
         r_squared=_optimism(boot, observed),
@@ -157,6 +162,7 @@ def _bootstrap(boot: Trials, subjects: Subjects, observed: Observed | None, alph
                 _with_zeros(boot, subjects, c), _answered(subjects, c, observed), alpha
             )
             for c in columns
+            if _comparable(subjects, c, observed)
         },
         rulings=()
         if observed is None
@@ -171,6 +177,11 @@ def _bootstrap(boot: Trials, subjects: Subjects, observed: Observed | None, alph
         ),
         statuses=statuses(boot),
     )
+
+
+def _comparable(subjects: Subjects, column: int, observed: Observed | None) -> bool:
+    """Whether the real answer has the column as it was read; under a rung its size is another's."""
+    return observed is None or not observed.transformed[subjects.owners[column]]
 
 
 def _with_zeros(boot: Trials, subjects: Subjects, column: int) -> FloatArray:
@@ -191,8 +202,10 @@ def _answered(subjects: Subjects, column: int, observed: Observed | None) -> flo
 
 def _optimism(boot: Trials, observed: Observed | None) -> Optimism:
     """R² less the mean of its excess (Harrell, Lee & Mark 1996; Efron & Gong 1983)."""
-    optimism = mean(boot.r_squared - boot.elsewhere)
-    apparent = float("nan") if observed is None else observed.r_squared
+    optimism = mean(boot.here - boot.elsewhere)
+    # A mean explains nothing, and has nothing that could be too good.
+    known = observed is not None and observed.status == "adopted"
+    apparent = observed.apparent if observed is not None and known else float("nan")
     return Optimism(
         apparent=apparent if np.isfinite(apparent) else None,
         optimism=optimism,
