@@ -24,6 +24,9 @@ METHODS = frozenset({"none", "backward", "backward_aic", "backward_bic"})
 
 ADOPTED, MEAN_ONLY, INCONCLUSIVE = 0, 1, 2
 
+# Replicates whose working models are changed together: their arrays stay near the processor.
+AT_ONCE = 256
+
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Eliminated:
@@ -136,7 +139,9 @@ class Elimination:
             goes_on = ~weak
         work = _Work(inverse, slopes, rss, columns, present, n - 1)
         if self.plan.selection.method != "none":
-            self._eliminate(work, np.flatnonzero(goes_on), n)
+            active = np.flatnonzero(goes_on)
+            for start in range(0, len(active), AT_ONCE):
+                self._eliminate(work, active[start : start + AT_ONCE], n)
         work.present[status == MEAN_ONLY] = False
         status[~work.present.any(axis=1) & (status == ADOPTED)] = MEAN_ONLY
         adopted = status == ADOPTED
@@ -285,6 +290,7 @@ class _Work:
     ) -> None:
         self.inverse, self.slopes, self.rss = inverse, slopes, rss
         self.columns, self.present, self.n_minus_one = columns, present, n_minus_one
+        self._change = np.empty_like(inverse)
 
     def taken(self, rows: NDArray[np.intp]) -> _Work:
         """A copy of some of the replicates."""
@@ -308,9 +314,10 @@ class _Work:
         self.slopes[rows] -= share * slope[:, None]
         self.slopes[rows, columns] = 0.0
         if len(rows) == len(self.slopes):
-            self.inverse -= share[:, :, None] * own[:, None, :]
+            np.multiply(share[:, :, None], own[:, None, :], out=self._change)
+            self.inverse -= self._change
         else:
             self.inverse[rows] -= share[:, :, None] * own[:, None, :]
-        self.inverse[rows, columns, :] = 0.0
+        # Its row is exactly 0 now, its column but for rounding.
         self.inverse[rows, :, columns] = 0.0
         self.columns[rows] -= 1
