@@ -59,9 +59,10 @@ def run(
     if as_json:
         from beforehand.cli.machine import json_text
         from beforehand.cli.results import run_result
+        from beforehand.screen.planned import planned
         from beforehand.screen.quoted import quoted
 
-        rehearsed = () if rehearsal is None else quoted(rehearsal)
+        rehearsed = () if rehearsal is None else quoted(rehearsal, selects=planned(lock).selects)
         terminal.document(json_text(run_result(lock, str(record), done.looks, rehearsed)))
         return
     from beforehand.screen.answer import answer_text

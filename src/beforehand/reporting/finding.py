@@ -56,7 +56,7 @@ def key_section(context: Context) -> Section | None:
     if answer is not None:
         cautions = [*answer.cautions]
         if context.rehearsal is not None:
-            cautions = [*quoted(context.rehearsal), *cautions]
+            cautions = [*quoted(context.rehearsal, selects=plan.selects), *cautions]
         blocks.append(Heading(words.CAUTIONS))
         blocks.append(Listing(tuple(Said(text) for text in cautions)))
     return section("key", words.TITLES["key"], blocks, appendix=False)

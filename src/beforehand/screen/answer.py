@@ -78,7 +78,11 @@ def answer_text(
         lines = tuple(line for text in lock.answer.cautions for line in wrapped(text, width, first="  - "))
         sections.append(Section(title="Cautions", lines=lines, tone="careful"))
     if rehearsal is not None:
-        lines = tuple(line for text in quoted(rehearsal) for line in wrapped(text, width, first="  - "))
+        lines = tuple(
+            line
+            for text in quoted(rehearsal, selects=plan.selects)
+            for line in wrapped(text, width, first="  - ")
+        )
         sections.append(Section(title="As rehearsed", lines=lines))
     sections.append(_record(lock, record, looks, width))
     return page([section for section in sections if section.lines], colour=colour)

@@ -26,6 +26,8 @@ class Planned:
     units, baselines, roles : mapping of predictor name to text
         Only what the plan gives.
     order : mapping of predictor name to its place in the plan, products after the plain ones
+    selects : bool
+        Whether predictors are selected.
     """
 
     alpha: float
@@ -36,6 +38,7 @@ class Planned:
     baselines: Mapping[str, str]
     roles: Mapping[str, str]
     order: Mapping[str, int]
+    selects: bool
 
     @property
     def level(self) -> str:
@@ -73,4 +76,6 @@ def planned(lock: Lock) -> Planned:
         baselines=baselines,
         roles={str(entry["column"]): str(entry.get("role", "candidate")) for entry in predictors},
         order={name: place for place, name in enumerate(names)},
+        selects="selection" in (written.get("steps") or ())
+        and (written.get("selection") or {}).get("method") != "none",
     )

@@ -12,12 +12,14 @@ if TYPE_CHECKING:
     from beforehand.rehearsing.models import RehearsalRecord
 
 
-def quoted(record: RehearsalRecord) -> tuple[str, ...]:
+def quoted(record: RehearsalRecord, *, selects: bool = True) -> tuple[str, ...]:
     """Sentences about the plan as a whole, the chance of a false find first.
 
     Parameters
     ----------
     record : RehearsalRecord
+    selects : bool
+        Whether the plan selects predictors.
 
     Returns
     -------
@@ -31,10 +33,8 @@ def quoted(record: RehearsalRecord) -> tuple[str, ...]:
             f"{_bracketed(made.expected.any_without_effect_adopted)}."
         )
     if made.noise is not None:
-        said.append(
-            "p-values after this selection: in pure noise this plan adopts something in "
-            f"{_bracketed(made.noise.any_adopted)}."
-        )
+        start = "p-values after this selection: in" if selects else "In"
+        said.append(f"{start} pure noise this plan adopts something in {_bracketed(made.noise.any_adopted)}.")
         real = made.noise.calibrated
         if real is not None and real.r_squared > 0:
             said.append(
