@@ -19,13 +19,12 @@ from beforehand.plan import Plan, decisions_digest, plan_from_mapping, read_plan
 from beforehand.predicting import Predictions, prediction_in, predictions, wanted_by
 from beforehand.record import learned_from, learned_in
 from beforehand.refreshing import Refreshed, refreshed, unkept
-from beforehand.rehearsals import Rehearsal, is_rehearsal, rehearse, rehearse_again
+from beforehand.rehearsals import Rehearsal, dry_run, is_rehearsal, rehearse, rehearse_again
 from beforehand.rehearsing.engines import Engine
 from beforehand.rehearsing.reading import read_rehearsal
 from beforehand.rehearsing.text import write_rehearsal
 from beforehand.running import Progress, run_steps
 from beforehand.runs import (
-    UNSEALED_STANDING,
     Run,
     labels_of,
     lock_path,
@@ -169,13 +168,7 @@ def replay(
     first = None if old.sealed_plan is None else plan_from_mapping(old.sealed_plan.written, old.plan.file)
     read = reader(data)
     if old.scrambled is not None:
-        from beforehand.rehearsing.scramble import marked, scrambled_table
-
-        seed = old.scrambled.seed
-        dry = run_plan(
-            again, lambda changed: scrambled_table(read(changed), changed, seed), progress, UNSEALED_STANDING
-        )
-        return replay_of(old, marked(dry.lock, seed))
+        return replay_of(old, dry_run(again, read, old.scrambled.seed, progress))
     new = run_plan(again, read, progress, Standing(record=old.seal, sealed=first), learned_in(old)).lock
     return replay_of(old, new)
 

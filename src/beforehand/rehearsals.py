@@ -8,13 +8,14 @@ from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from beforehand.faults import Fault, LockError, PlanError
+from beforehand.faults import LockError
 from beforehand.lock import Lock, read_lock
 from beforehand.lock.difference import Replay, replay_of
 from beforehand.names import beside
 from beforehand.plan import Plan, decisions_digest, read_plan
 from beforehand.rehearsing.engines import ONE_WORKER, Engine
-from beforehand.rehearsing.models import RehearsalRecord, ScrambledRun
+from beforehand.rehearsing.engines.saving import SUFFIX
+from beforehand.rehearsing.models import RehearsalRecord, Scenarios, ScrambledRun
 from beforehand.rehearsing.observed import Observed
 from beforehand.rehearsing.reading import read_rehearsal
 from beforehand.rehearsing.real import observed_of
@@ -23,14 +24,13 @@ from beforehand.rehearsing.stage import Stage
 from beforehand.rehearsing.text import with_digest
 from beforehand.rehearsing.whole import Asked, choice, rehearsed
 from beforehand.running import Progress, run_steps
-from beforehand.runs import UNSEALED_STANDING, lock_path, looked_run, reader, run_plan
+from beforehand.runs import UNSEALED_STANDING, lock_path, looked_run, plan_path, reader, run_plan
 from beforehand.sealing.chain import refused
 from beforehand.table import Table
 
 if TYPE_CHECKING:
     import pandas as pd
 
-PART_SUFFIX = ".rehearsal.part"
 SCRAMBLED_SUFFIX = ".scrambled.lock.yaml"
 
 # For a plan without a table the expected world needs some number of rows to be tried at.
@@ -111,9 +111,6 @@ def rehearse(
     asked_seed = plan.rehearsal.seed if seed is None else seed
     chosen = scenarios or plan.rehearsal.scenarios
     table = _table(plan, data, chosen)
-    if table is not None and isinstance(data, str | os.PathLike):
-        # What was read is told by its own name, not by that of the table for which the plan was written.
-        table = replace(table, file=Path(data).name)
     lock = _lock_of(plan, table)
     written = "scenarios" in plan.rehearsal.model_fields_set
     worlds, left_out = choice(
@@ -123,12 +120,10 @@ def rehearse(
         table = reader(data)(plan)
     if table is None and not rows:
         rows = ROWS_WITHOUT_TABLE
-    observed, looked = _observed(plan, table, lock, worlds, reader(data), progress)
-    dry = (
-        _scrambled(plan, table, asked_seed, reader(data), progress)
-        if "scrambled" in worlds and table
-        else None
-    )
+    stage = None if table is None else Stage.of(plan, table)
+    read = _reusing(plan, table, reader(data))
+    observed, looked = _observed(plan, stage, lock, worlds, read, progress)
+    dry = dry_run(plan, read, asked_seed, progress) if "scrambled" in worlds and stage else None
     asked = Asked(
         scenarios=tuple(name for name in worlds if name != "scrambled"),
         replicates=plan.rehearsal.replicates if replicates is None else replicates,
@@ -136,16 +131,18 @@ def rehearse(
         rows=tuple(dict.fromkeys(rows)),
         engine=engine,
         left_out=left_out,
-        part=beside(_path(plan), PART_SUFFIX) if keep or resume else None,
+        part=beside(plan_path(plan), SUFFIX) if keep or resume else None,
         resume=resume,
     )
     told = None
     if dry is not None:
         name = (
-            beside(_path(plan), SCRAMBLED_SUFFIX).name if plan.origin is not None else "scrambled.lock.yaml"
+            beside(plan_path(plan), SCRAMBLED_SUFFIX).name
+            if plan.origin is not None
+            else "scrambled.lock.yaml"
         )
         told = ScrambledRun(lock=name, status=dry.status, seed=asked_seed)
-    record = rehearsed(plan, table, asked, observed=observed, scrambled=told, progress=progress)
+    record = rehearsed(plan, stage, asked, observed=observed, scrambled=told, progress=progress)
     return Rehearsal(record=record, scrambled=dry, looked=looked)
 
 
@@ -170,7 +167,7 @@ def with_earlier(new: RehearsalRecord, path: Path) -> tuple[RehearsalRecord, tup
         return new, ()
     names = [
         name
-        for name in type(old.scenarios).model_fields
+        for name in Scenarios.model_fields
         if getattr(old.scenarios, name) is not None and getattr(new.scenarios, name) is None
     ]
     same = (old.plan.decisions, old.data, old.seed, old.replicates) == (
@@ -217,20 +214,16 @@ def rehearse_again(
         what = f"is of a plan that decided otherwise than {old.plan.file} does now: rehearse it anew"
         raise refused(str(path), what, "rehearsal.plan")
     made = old.scenarios
-    names = tuple(
-        name
-        for name in ("scrambled", "noise", "expected", "resample", "hold_out")
-        if getattr(made, name) is not None
-    )
+    names = tuple(name for name in Scenarios.model_fields if getattr(made, name) is not None)
     at_hand = old.data is not None
     table = _table(again, data, names) if at_hand or data is not None else None
     if table is not None and old.data is not None and table.fingerprint != old.data.fingerprint:
         raise refused(str(path), f"is of another table than {table.file}", "rehearsal.data")
     by_rows = () if made.expected is None else made.expected.by_rows
+    stage = None if table is None else Stage.of(again, table)
     observed: Observed | None = None
-    if old.lock is not None and table is not None:
-        subjects = Stage.of(again, table).subjects
-        observed = observed_of(run_steps(again, table, progress), subjects, old.lock)
+    if old.lock is not None and stage is not None:
+        observed = observed_of(run_steps(again, stage.setting.table, progress), stage.subjects, old.lock)
     asked = Asked(
         scenarios=tuple(name for name in names if name != "scrambled"),
         replicates=old.replicates,
@@ -242,10 +235,9 @@ def rehearse_again(
     )
     told = made.scrambled
     if told is not None and table is not None:
-        told = told.model_copy(
-            update={"status": _scrambled(again, table, told.seed, reader(data), progress).status}
-        )
-    new = rehearsed(again, table, asked, observed=observed, scrambled=told, progress=progress)
+        dry = dry_run(again, _reusing(again, table, reader(data)), told.seed, progress)
+        told = told.model_copy(update={"status": dry.status})
+    new = rehearsed(again, stage, asked, observed=observed, scrambled=told, progress=progress)
     return replay_of(old, new)
 
 
@@ -258,15 +250,6 @@ def is_rehearsal(path: str | os.PathLike[str]) -> bool:
         return False
 
 
-def _path(plan: Plan) -> Path:
-    """The plan's own file, beside which everything else stands."""
-    if plan.origin is None or plan.origin.path is None:
-        raise PlanError(
-            [Fault(file="plan", line=None, place="", what="was not read from a file", code="no_file")]
-        )
-    return Path(plan.origin.path)
-
-
 def _table(
     plan: Plan, data: str | os.PathLike[str] | pd.DataFrame | None, names: tuple[str, ...]
 ) -> Table | None:
@@ -275,7 +258,9 @@ def _table(
         there = Path(plan.origin.path).parent / plan.data.file
         if not there.exists() and "expected" in names and plan.expects is not None:
             return None
-    return reader(data)(plan)
+    table = reader(data)(plan)
+    # What was read is told by its own name, not by that of the table for which the plan was written.
+    return replace(table, file=Path(data).name) if isinstance(data, str | os.PathLike) else table
 
 
 def _lock_of(plan: Plan, table: Table | None) -> Lock | None:
@@ -290,32 +275,34 @@ def _lock_of(plan: Plan, table: Table | None) -> Lock | None:
     return lock if same and lock.scrambled is None else None
 
 
+def _reusing(plan: Plan, table: Table | None, read: Callable[[Plan], Table]) -> Callable[[Plan], Table]:
+    """What reads a table under a plan, without reading again what is at hand."""
+    return lambda changed: table if changed is plan and table is not None else read(changed)
+
+
 def _observed(
     plan: Plan,
-    table: Table | None,
+    stage: Stage | None,
     lock: Lock | None,
     worlds: tuple[str, ...],
     read: Callable[[Plan], Table],
     progress: Progress | None,
 ) -> tuple[Observed | None, bool]:
     """The real run, and whether making it was a look."""
-    if table is None:
+    if stage is None:
         return None, False
-    subjects = Stage.of(plan, table).subjects
     if lock is not None:
-        return observed_of(run_steps(plan, table, progress), subjects, lock.digest), False
+        trail = run_steps(plan, stage.setting.table, progress)
+        return observed_of(trail, stage.subjects, lock.digest), False
     if not LOOKING.intersection(worlds):
         return None, False
-    done = looked_run(plan, lambda changed: table if changed is plan else read(changed), progress=progress)
-    return observed_of(done.trail, subjects, done.lock.digest), True
+    done = looked_run(plan, read, progress=progress)
+    return observed_of(done.trail, stage.subjects, done.lock.digest), True
 
 
-def _scrambled(
-    plan: Plan, table: Table, seed: int, read: Callable[[Plan], Table], progress: Progress | None
-) -> Lock:
-    """The whole run on a shuffled outcome."""
-
-    def shuffled(changed: Plan) -> Table:
-        return scrambled_table(table if changed is plan else read(changed), changed, seed)
-
-    return marked(run_plan(plan, shuffled, progress, UNSEALED_STANDING).lock, seed)
+def dry_run(plan: Plan, read: Callable[[Plan], Table], seed: int, progress: Progress | None = None) -> Lock:
+    """The whole run on a shuffled outcome, marked as one."""
+    lock = run_plan(
+        plan, lambda changed: scrambled_table(read(changed), changed, seed), progress, UNSEALED_STANDING
+    ).lock
+    return marked(lock, seed)

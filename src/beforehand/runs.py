@@ -149,11 +149,22 @@ def lock_path(plan: Plan) -> Path:
     PlanError
         For a plan that was not read from a file.
     """
+    return beside(plan_path(plan), LOCK_SUFFIX)
+
+
+def plan_path(plan: Plan) -> Path:
+    """A plan's own file, beside which everything else stands.
+
+    Raises
+    ------
+    PlanError
+        For a plan that was not read from a file.
+    """
     if plan.origin is None or plan.origin.path is None:
         raise PlanError(
             [Fault(file="plan", line=None, place="", what="was not read from a file", code="no_file")]
         )
-    return beside(plan.origin.path, LOCK_SUFFIX)
+    return Path(plan.origin.path)
 
 
 def reader(

@@ -333,4 +333,5 @@ def test_the_rehearsal_of_another_table_is_not_quoted(place, typed):
     table.iloc[:60].to_csv(place / "other.csv", index=False)
     assert typed("rehearse ferries.plan.yaml --replicates 100 --scenario noise --data other.csv").code == 0
     assert read_rehearsal(place / "ferries.rehearsal.yaml").data.file == "other.csv"
+    assert typed("replay ferries.rehearsal.yaml --data other.csv").code == 0
     assert "As rehearsed" not in typed("run ferries.plan.yaml").out

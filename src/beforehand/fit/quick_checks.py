@@ -79,16 +79,7 @@ def white(columns: Columns, keys: Sequence[Key], design: Design, residual: Float
         values = np.delete(values, design.gone, axis=0)
         values = values - values.mean(axis=0)
     kept = _independent(values)
-    n, df = design.n, kept.shape[1]
-    scaled = residual / np.abs(residual).max()
-    squared = scaled * scaled
-    squared = squared - squared.mean()
-    total = float(squared @ squared)
-    if total <= NEAR * NEAR * n:
-        raise NotQuick("all squared residuals are nearly equal")
-    cross = squared @ kept
-    statistic = n * float(cross @ cross) / total
-    return Check(name="white", statistic=statistic, p=float(chdtrc(df, statistic)), df=(df,))
+    return _spread("white", kept, np.eye(kept.shape[1]), residual)
 
 
 def _independent(values: FloatArray) -> FloatArray:

@@ -16,8 +16,10 @@ import numpy as np
 from beforehand.faults import PlanError
 from beforehand.plan import Expects, Plan
 from beforehand.rehearsing.drawing import Declared, declared_predictors, drawn_columns, plan_fault
+from beforehand.rehearsing.rows import table_of_rows
 from beforehand.rehearsing.seeds import generator
 from beforehand.rehearsing.trials import FloatArray, Subjects, Trials
+from beforehand.running import order_column
 from beforehand.steps.missing_data import missing_data
 from beforehand.steps.source import TableSource
 from beforehand.table import Column, Stage, Table, ranks_of
@@ -236,7 +238,7 @@ class DrawnWorld:
         """The table of one replicate."""
         # The number of rows tells the streams apart, so that a row of a grid is the same in any grid.
         rng = generator(self.seed, "predictors", replicate, self.rows)
-        order = _order_column(self.plan)
+        order = order_column(self.plan)
         if isinstance(self.drawn_from, Table):
             columns = _rows_again(self.drawn_from, rng, self.rows, order)
         else:
@@ -255,7 +257,7 @@ class DrawnWorld:
         from beforehand.rehearsing.stage import table_trials
 
         tables = (self.table(replicate) for replicate in range(first, last))
-        return table_trials(self.plan, tables, self.subjects)
+        return table_trials(self.plan, tables, last - first, self.subjects)
 
 
 def expected_world(plan: Plan, table: Table, stage: stages.Stage, seed: int) -> ExpectedWorld:
@@ -375,13 +377,4 @@ def _rows_again(table: Table, rng: np.random.Generator, rows: int, order: str | 
     drawn = np.sort(rng.integers(0, table.n_rows, size=rows))
     if order is not None:
         drawn = drawn[np.argsort(ranks_of(table, order)[drawn], kind="stable")]
-    return {
-        name: Column(name=name, kind=column.kind, values=column.values[drawn], levels=column.levels)
-        for name, column in table.columns.items()
-    }
-
-
-def _order_column(plan: Plan) -> str | None:
-    """The column in whose order rows follow each other."""
-    check = plan.assumptions.independence
-    return None if check == "skip" else check.in_order_of
+    return dict(table_of_rows(table, drawn).columns)

@@ -18,6 +18,7 @@ from beforehand.rehearsing.trial import Ended, Setting, run_trial
 from beforehand.rehearsing.trials import STATUSES, Trials
 from beforehand.steps.missing_data import missing_mask
 from beforehand.steps.source import TableSource
+from beforehand.table.wanted import group_column
 
 NAME = "hold_out"
 
@@ -117,7 +118,7 @@ class HoldOutWorld:
 def hold_out_world(stage: Stage, seed: int) -> HoldOutWorld:
     """Folds as the plan declares them: groups of a column, or rows drawn at random."""
     plan, table = stage.setting.plan, stage.setting.table
-    column = plan.rehearsal.leave_out or getattr(plan.errors, "cluster_by", None)
+    column = group_column(plan)
     if column is None:
         folds = max(2, min(plan.rehearsal.folds, table.n_rows))
         return HoldOutWorld(stage=stage, folds=folds, groups=(), codes=None, seed=seed)

@@ -97,4 +97,4 @@ class SampleWorld:
         setting = self.stage.setting
         tables = (self.table(replicate) for replicate in replicates)
         elsewhere = setting if self.name == BOOTSTRAP else None
-        return table_trials(setting.plan, tables, self.stage.subjects, self.seen, elsewhere)
+        return table_trials(setting.plan, tables, len(replicates), self.stage.subjects, self.seen, elsewhere)

@@ -100,6 +100,7 @@ def _cross(setting: Setting, outcomes: FloatArray) -> FloatArray | None:
 def table_trials(
     plan: Plan,
     tables: Iterable[Table],
+    count: int,
     subjects: Subjects,
     seen: Sequence[SeenRuling] = (),
     elsewhere: Setting | None = None,
@@ -110,15 +111,17 @@ def table_trials(
     ----------
     plan : Plan
     tables : iterable of Table
+        Asked for one after the other, so that one is held at a time.
+    count : int
+        How many there are.
     subjects : Subjects
     seen : sequence of SeenRuling
         Rulings of the real run.
     elsewhere : Setting, optional
         Rows on which the answer of each replicate is tried.
     """
-    made = list(tables)
-    into = Collector(plan, subjects, len(made), seen)
-    for place, table in enumerate(made):
+    into = Collector(plan, subjects, count, seen)
+    for place, table in enumerate(tables):
         try:
             setting = setting_on(plan, table)
             ended = run_trial(setting, setting.source.raw(plan.outcome.column))

@@ -35,7 +35,6 @@ from beforehand.rehearsing.summaries.resample import resample_figures
 from beforehand.rehearsing.text import with_digest
 from beforehand.rehearsing.trials import Subjects, Trials
 from beforehand.rehearsing.world import World
-from beforehand.table import Table
 
 # Replicates that are computed together where they are computed side by side.
 WIDE_BLOCK = 500
@@ -77,7 +76,7 @@ class Asked:
 
 def rehearsed(
     plan: Plan,
-    table: Table | None,
+    stage: Stage | None,
     asked: Asked,
     *,
     observed: Observed | None = None,
@@ -89,8 +88,8 @@ def rehearsed(
     Parameters
     ----------
     plan : Plan
-    table : Table or None
-        Without one only the expected world can be rehearsed.
+    stage : Stage or None
+        Of the plan on its table; without a table only the expected world can be rehearsed.
     asked : Asked
     observed : Observed, optional
         The real run, where there has been one.
@@ -109,7 +108,7 @@ def rehearsed(
         On an interrupt; what is finished stands in the part file.
     PlanError, DataError, InputError
     """
-    stage = None if table is None else Stage.of(plan, table)
+    table = None if stage is None else stage.setting.table
     with ExitStack() as open_files:
         saved: Saved | None = None
         if asked.part is not None:
@@ -121,7 +120,7 @@ def rehearsed(
         made = Scenarios(
             scrambled=scrambled,
             noise=_noise(plan, stage, asked, machine, observed),
-            expected=_expected(plan, table, stage, asked, machine),
+            expected=_expected(plan, stage, asked, machine),
             resample=_resample(plan, stage, asked, machine, observed),
             hold_out=_hold_out(stage, asked, machine),
         )
@@ -188,13 +187,12 @@ def _noise(
     return noise_figures(trials, stage.subjects, plan.alpha, observed)
 
 
-def _expected(
-    plan: Plan, table: Table | None, stage: Stage | None, asked: Asked, machine: _Machine
-) -> ExpectedFigures | None:
+def _expected(plan: Plan, stage: Stage | None, asked: Asked, machine: _Machine) -> ExpectedFigures | None:
     if "expected" not in asked.scenarios:
         return None
     by_rows: list[tuple[int, Trials]] = []
     subjects: Subjects
+    table = None if stage is None else stage.setting.table
     if stage is not None and table is not None:
         subjects = stage.subjects
         world = expected_world(plan, table, stage, asked.seed)

@@ -49,9 +49,7 @@ def answer_section(context: Context) -> Section | None:
                 p_text(term.p, plan.alpha) if term.p is not None else "",
                 f"{low} to {high}",
                 figure(term.standardized) if term.standardized is not None else "",
-                percent(share)
-                if (share := lost.get(term.predictor or "")) is not None and _first(term, context)
-                else "",
+                _added(lost.get(term.predictor or ""), term, context),
                 beside((by_itself.coefficient,), term.standard_error)[0] if single and by_itself else "",
                 _in_full(full, term),
             )
